@@ -11,9 +11,11 @@ pub mod bloch;
 mod ccz;
 mod ensemble;
 pub mod extent;
+pub mod mixing;
 mod prepared;
 mod rotation;
 pub mod site;
+pub mod sparsify;
 mod splitting;
 
 use std::sync::Arc;
@@ -25,6 +27,7 @@ pub use ccz::CczComponent;
 pub use site::{
     CczSite, PreparedMember, PreparedSite, RotationMember, RotationSite, Site, SiteKind, Stabiliser,
 };
+pub use sparsify::{Draw, Sparsifier};
 
 /// A noisy circuit whose non-Clifford gates have become sites.
 #[derive(Debug, Clone)]
