@@ -10,5 +10,6 @@
 #![warn(missing_docs)]
 
 pub mod circuit;
+pub mod clifford;
 pub mod magic;
 pub mod noise;
