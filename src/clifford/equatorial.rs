@@ -14,7 +14,7 @@
 //! ```
 //!
 //! (Â: the matrix A_qq' with a_q mod 2 on the diagonal): a sum over a
-//! Z₄-valued form, done by [`sum`](self) variable by variable. With b and m the
+//! Z₄-valued form, done variable by variable. With b and m the
 //! diagonal and row of the next variable,
 //!
 //! - b odd: (1 + i^b(−1)^{m·y}) = √2·e^{±iπ/4}·i^{−b[m·y]}, a square;
@@ -25,11 +25,14 @@
 //! there on the two sums differ in ⌊b/2⌋ and the phase only: never in b mod 2 or
 //! in the pairs. So both are done together, as two *lanes*.
 
+#[cfg(test)]
+mod tests;
+
 use num_complex::Complex64;
 use rand::Rng;
 
 use super::terms::bits::Bits;
-use super::terms::phase::{Diagonal, Factor};
+use super::terms::phase::Diagonal;
 use super::terms::term::Head;
 use super::terms::{Mask, Terms};
 
@@ -68,9 +71,14 @@ impl<const W: usize> EquatorialForm<W> {
     ///
     /// If a slot is not below the capacity.
     pub fn randomise<R: Rng + ?Sized>(&mut self, active: &Mask<W>, rng: &mut R) {
-        let mut words = |used: Bits<W>| {
-            Bits(used.0.map(|word| if word == 0 { 0 } else { word & rng.next_u64() }))
-        };
+        self.fill(active, |used| {
+            let draw = |word| if word == 0 { 0 } else { word & rng.next_u64() };
+            Bits(used.0.map(draw))
+        });
+    }
+
+    /// Sets the form from a source of words; it is told which bits are used.
+    fn fill(&mut self, active: &Mask<W>, mut words: impl FnMut(Bits<W>) -> Bits<W>) {
         self.active = Bits(*active);
         self.diagonal = Diagonal {
             low: words(self.active),
@@ -151,7 +159,7 @@ struct Scratch<const W: usize> {
 }
 
 /// What differs between the two sums.
-#[derive(Clone, Copy)]
+#[derive(Debug, Clone, Copy)]
 struct Lane<const W: usize> {
     diagonal: Diagonal<W>,
     eighths: u8,
@@ -222,7 +230,7 @@ impl<const W: usize> Scratch<W> {
             }
             self.rows[p] = pairs & !here;
             let sign = (image & head.shift).parity();
-            diagonal.add((6 - value - 2 * u8::from(sign)) & 3, here);
+            diagonal.add((8 - value - 2 * u8::from(sign)) & 3, here);
         }
         let constant = form.image(head.shift).1;
         let lane = Lane {

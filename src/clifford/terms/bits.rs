@@ -22,13 +22,13 @@ impl<const W: usize> Bits<W> {
 
     /// The bits below `count` set.
     pub(crate) fn first(count: usize) -> Self {
-        Self(std::array::from_fn(
-            |word| match count.saturating_sub(64 * word) {
+        Self(std::array::from_fn(|word| {
+            match count.saturating_sub(64 * word) {
                 0 => 0,
                 part @ 1..64 => (1 << part) - 1,
                 _ => !0,
-            },
-        ))
+            }
+        }))
     }
 
     /// Whether this bit is set.

@@ -86,8 +86,11 @@ impl<const W: usize> Terms<W> {
             "more than 2^32 - 1 terms"
         );
         self.heads.clear();
-        self.heads
-            .extend((0..).zip(weights).map(|(label, &weight)| Head::new(weight, label)));
+        self.heads.extend(
+            (0..)
+                .zip(weights)
+                .map(|(label, &weight)| Head::new(weight, label)),
+        );
         // Rows are written before they are read: no need to clear them.
         self.rows.resize(self.slots * weights.len(), Bits::ZERO);
     }

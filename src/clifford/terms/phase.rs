@@ -179,7 +179,10 @@ mod tests {
                 diagonal.add(start, Bits::one(5));
                 diagonal.add(more, Bits::one(5) | Bits::one(6));
                 assert_eq!(diagonal.at(5), (start + more) % 4);
-                assert_eq!(diagonal.total(Bits::one(5) | Bits::one(6)), (start + 2 * more) % 4);
+                assert_eq!(
+                    diagonal.total(Bits::one(5) | Bits::one(6)),
+                    (start + 2 * more) % 4
+                );
                 assert_eq!(diagonal.take(6), more);
                 assert_eq!(diagonal.at(6), 0);
             }

@@ -293,8 +293,7 @@ impl<const W: usize> Term<'_, W> {
         head.shift ^= row & !head.pivots;
         let quarters = head.diagonal.at(slot);
         head.factor.turn_quarters(quarters);
-        head.diagonal.high ^=
-            (row & head.pivots) | Bits::one(slot).when(quarters & 1 == 1);
+        head.diagonal.high ^= (row & head.pivots) | Bits::one(slot).when(quarters & 1 == 1);
     }
 
     /// Projects on Z_slot = (−1)^value and leaves the slot idle. Returns

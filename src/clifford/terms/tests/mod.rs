@@ -2,8 +2,8 @@
 
 mod counts;
 mod dense;
-mod overlaps;
 mod properties;
 mod sequences;
 
-pub(crate) use dense::{Dense, Layout};
+pub(crate) use dense::{Dense, quarter};
+pub(crate) use sequences::Pair;

@@ -16,7 +16,7 @@ const STATES: [Stabiliser; 6] = [
     Stabiliser::MinusI,
 ];
 
-pub(super) fn random_phase<R: Rng>(rng: &mut R) -> QuadraticPhase {
+fn random_phase<R: Rng>(rng: &mut R) -> QuadraticPhase {
     QuadraticPhase {
         z: rng.random(),
         cz: rng.random(),
@@ -25,15 +25,15 @@ pub(super) fn random_phase<R: Rng>(rng: &mut R) -> QuadraticPhase {
 }
 
 /// Terms and their dense twins.
-pub(super) struct Pair<const W: usize> {
-    pub(super) terms: Terms<W>,
-    pub(super) vectors: Vec<Dense>,
-    pub(super) layout: Layout,
+pub(crate) struct Pair<const W: usize> {
+    pub(crate) terms: Terms<W>,
+    pub(crate) vectors: Vec<Dense>,
+    pub(crate) layout: Layout,
     idle: Vec<bool>,
 }
 
 impl<const W: usize> Pair<W> {
-    pub(super) fn new<R: Rng>(r: usize, capacity: usize, count: usize, rng: &mut R) -> Self {
+    pub(crate) fn new<R: Rng>(r: usize, capacity: usize, count: usize, rng: &mut R) -> Self {
         let mut pair = Self {
             terms: Terms::new(capacity),
             vectors: Vec::new(),
@@ -55,7 +55,7 @@ impl<const W: usize> Pair<W> {
     }
 
     /// A random operation with random parameters, on both.
-    pub(super) fn step<R: Rng>(&mut self, rng: &mut R) {
+    pub(crate) fn step<R: Rng>(&mut self, rng: &mut R) {
         let r = self.layout.0.len();
         let qubit = rng.random_range(0..r);
         let slot = self.layout.0[qubit];
