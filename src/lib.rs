@@ -12,3 +12,4 @@
 pub mod circuit;
 pub mod magic;
 pub mod noise;
+pub mod store;
