@@ -335,3 +335,41 @@ fn other_files_are_told_apart() {
     change("less.h5", &|file| file.unlink("audit"));
     assert!(matches!(open("less.h5"), StoreError::Damaged { .. }));
 }
+
+/// The limit is set by a shell for a child process; the child is the next test.
+#[cfg(unix)]
+#[test]
+fn a_failing_write_is_reported_and_cleaned_up() {
+    // 512-byte or 1024-byte blocks, depending on the shell: below and above the
+    // size of the empty file, and in between chunks.
+    for blocks in ["2", "20", "64", "256"] {
+        let folder = tempfile::tempdir().unwrap();
+        let output = std::process::Command::new("sh")
+            .args(["-c", "ulimit -f $1; shift; exec \"$@\"", "sh", blocks])
+            .arg(std::env::current_exe().unwrap())
+            .args(["--exact", "with_a_file_size_limit", "--ignored"])
+            .env("SHOTTOWER_TEST_FOLDER", folder.path())
+            .output()
+            .unwrap();
+        // Also a crash at exit, when HDF5 tidies up after itself, would show.
+        assert!(output.status.success(), "{blocks} blocks: {output:?}");
+        assert!(is_empty(folder.path()), "{blocks} blocks");
+    }
+}
+
+#[cfg(unix)]
+#[test]
+#[ignore = "needs a file-size limit; the test above starts it with one"]
+fn with_a_file_size_limit() {
+    let folder = std::env::var_os("SHOTTOWER_TEST_FOLDER").expect("started by the other test");
+    let header = header();
+    let write = || -> Result<(), StoreError> {
+        let mut writer = Writer::create(&Path::new(&folder).join("a.h5"), &header, ALL)?;
+        for seed in 0..10 {
+            writer.append_shots(&rows(10_000, header.bits(), seed))?;
+        }
+        writer.finish(Finished::default())
+    };
+    let message = write().unwrap_err().to_string();
+    assert!(message.contains("ulimit"), "{message}");
+}

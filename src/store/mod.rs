@@ -29,6 +29,7 @@ mod error;
 mod header;
 mod layout;
 mod reader;
+mod tables;
 mod temporary;
 mod writer;
 
