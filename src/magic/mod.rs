@@ -7,13 +7,21 @@
 //!
 //! This module knows the noisy circuit, and nothing of frames or terms.
 
+pub mod bloch;
+mod ccz;
+mod ensemble;
+pub mod extent;
+mod prepared;
+mod rotation;
 pub mod site;
+mod splitting;
 
 use std::sync::Arc;
 
 use crate::circuit::{BitExpression, Clifford, PauliProduct};
 use crate::noise::{PauliChannel, ReadoutFlip};
 
+pub use ccz::CczComponent;
 pub use site::{
     CczSite, PreparedMember, PreparedSite, RotationMember, RotationSite, Site, SiteKind, Stabiliser,
 };
