@@ -13,18 +13,16 @@ a few thousand branches.
 import numpy as np
 
 import noise_channels
-from noise_channels import kraus_sum
+from noise_channels import kraus_sum, operate
 
 NEGLIGIBLE = 1e-15
 
 
 class Reference:
-    """Simulation of a circuit. `substitute` maps a gate statement to a list of
-    (probability, matrix) applied instead, or None to keep it."""
+    """Simulation of a circuit, done when it is made."""
 
-    def __init__(self, circuit, substitute=None):
+    def __init__(self, circuit):
         self.circuit = circuit
-        self.substitute = substitute or (lambda statement: None)
         count = len(circuit.qubit_names)
         self.branches = {(0, (0,) * count): np.ones((), dtype=complex)}
         self._block(circuit.statements)
@@ -93,10 +91,12 @@ class Reference:
                     density, axes, statement.duration))
 
     def _gate(self, statement):
-        mixture = self.substitute(statement) or [(1.0, statement.matrix)]
-        operators = [np.sqrt(p) * m for p, m in mixture]
         self._map(statement.qubits,
-                  lambda density, axes: kraus_sum(density, operators, axes))
+                  lambda density, axes: operate(density, statement.matrix, axes))
+
+    def _kraus(self, statement):
+        self._map(statement.qubits,
+                  lambda density, axes: kraus_sum(density, statement.value, axes))
 
     def _call(self, statement):
         self._block(statement.body)
@@ -190,9 +190,9 @@ def with_bit(bits, index, value):
     return bits & ~(1 << index) | value << index
 
 
-def distribution(circuit, registers=None, substitute=None):
+def distribution(circuit, registers=None):
     """Exact distribution of the recorded bits; see `Reference.distribution`."""
-    return Reference(circuit, substitute).distribution(registers)
+    return Reference(circuit).distribution(registers)
 
 
 def bloch_vector(channels, vector):
