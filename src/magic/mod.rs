@@ -13,6 +13,7 @@ mod ensemble;
 pub mod extent;
 mod prepared;
 mod rotation;
+mod schedule;
 pub mod site;
 mod splitting;
 
@@ -22,6 +23,7 @@ use crate::circuit::{BitExpression, Clifford, PauliProduct};
 use crate::noise::{PauliChannel, ReadoutFlip};
 
 pub use ccz::CczComponent;
+pub use schedule::{ScheduleOptions, schedule};
 pub use site::{
     CczSite, PreparedMember, PreparedSite, RotationMember, RotationSite, Site, SiteKind, Stabiliser,
 };
