@@ -1,6 +1,6 @@
 //! Magic: the non-Clifford places ("sites") of a noisy circuit.
 //!
-//! [`schedule`] folds angles to (0, π/2), merges noise into sites, collects
+//! [`schedule()`] folds angles to (0, π/2), merges noise into sites, collects
 //! fresh qubits into prepared sites, and gives every site its equal-extent
 //! ensemble with each member split into stabiliser components. Theory: PRX
 //! Quantum 2, 010345 (2021); Quantum 3, 181 (2019).

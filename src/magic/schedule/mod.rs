@@ -32,7 +32,7 @@ use crate::noise::NoisyCircuit;
 use super::Schedule;
 use timeline::Timeline;
 
-/// What [`schedule`] may do.
+/// What [`schedule()`] may do.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub struct ScheduleOptions {
     /// Whether noise moves into sites. If not, every channel is kept as it

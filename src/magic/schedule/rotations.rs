@@ -11,7 +11,8 @@ use super::axis::rotation_passes;
 use super::timeline::{Direction, Timeline, Work};
 use super::walk::Walk;
 
-/// An angle this near to a multiple of π/2 is one.
+/// An angle this near to a multiple of π/2 is one; a large angle may miss it by
+/// as much as it can have been rounded.
 const TOLERANCE: f64 = 1e-12;
 
 /// How many instructions a rotation looks past for the next one.
@@ -35,7 +36,7 @@ pub(super) fn add_up(timeline: &mut Timeline) {
                 Work::Rotation {
                     axis: other, angle, ..
                 } if *other == axis && timeline.node(next).condition == condition => {
-                    sum += angle;
+                    sum = sum % TAU + angle % TAU;
                     timeline.remove(next);
                     passed = 0;
                 }
@@ -82,7 +83,8 @@ fn quarters_and_rest(angle: f64) -> (u8, f64) {
     let turns = angle % TAU / FRAC_PI_2;
     let nearest = turns.round();
     let rest = angle % TAU - nearest * FRAC_PI_2;
-    let (quarters, rest) = if rest.abs() < TOLERANCE {
+    let tolerance = (4.0 * f64::EPSILON * angle.abs()).clamp(TOLERANCE, 1e-9);
+    let (quarters, rest) = if rest.abs() < tolerance {
         (nearest, 0.0)
     } else if rest < 0.0 {
         (nearest - 1.0, rest + FRAC_PI_2)
@@ -108,10 +110,15 @@ mod tests {
             (7.0 * FRAC_PI_2 - 1e-13, 3, 0.0),
             (1.6, 1, 1.6 - FRAC_PI_2),
             (0.0, 0, 0.0),
+            (1e5 * PI, 0, 0.0),
+            (1e5 * PI + 0.3, 0, 0.3),
         ] {
             let (found_quarters, found_rest) = quarters_and_rest(angle);
             assert_eq!(found_quarters, quarters, "{angle}");
-            assert!((found_rest - rest).abs() < 1e-15, "{angle}: {found_rest}");
+            assert!(
+                (found_rest - rest).abs() < 1e-15 + 1e-15 * angle.abs(),
+                "{angle}: {found_rest}"
+            );
         }
     }
 

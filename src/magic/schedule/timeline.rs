@@ -141,6 +141,9 @@ impl Timeline {
                     timeline.first.resize(place + 1, NONE);
                 }
                 let previous = std::mem::replace(&mut last[place], index);
+                if previous == index {
+                    return; // named twice
+                }
                 match previous {
                     NONE => timeline.first[place] = index,
                     _ => timeline.wire_mut(previous, qubit).next = index,

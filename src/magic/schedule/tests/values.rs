@@ -10,7 +10,7 @@ use crate::noise::{Kind, NoisyCircuit, PauliChoices, ReadoutFlip};
 use super::{channel, circuit, depolarizing, rotation};
 
 /// Extent of a T gate, 1/cos²(π/8). Quantum 3, 181 (2019).
-const T_EXTENT: f64 = 1.171572875253810;
+const T_EXTENT: f64 = 1.17157287525381;
 
 fn close(found: f64, expected: f64) {
     assert!(
