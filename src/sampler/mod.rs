@@ -10,6 +10,8 @@
 pub mod batch;
 pub mod machine;
 pub mod random;
+#[cfg(test)]
+mod tests;
 
 use std::sync::atomic::{AtomicBool, Ordering};
 
