@@ -12,4 +12,5 @@
 pub mod circuit;
 pub mod magic;
 pub mod noise;
+pub mod report;
 pub mod store;
