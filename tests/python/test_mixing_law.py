@@ -1,0 +1,181 @@
+"""The mixing law at small numbers of terms, where the admixture is large.
+
+`LawByHand` checks the independent companion (law_circuits.py) against published
+extents and against a sum over all draws. `Program` compares drawn shots with
+[(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), false-alarm rate 1e-6 a test, and the
+companion's own shots with P_comp. Every case is required to be sharp: the shots
+would tell the law from the ideal law with a power of at least 0.99.
+With 40,000 shots an error of about 2 % total variation is caught; the number of
+probes is set by a small --delta so that their bias stays below 0.1 %.
+"""
+
+import itertools
+import unittest
+
+import numpy as np
+
+import goodness_of_fit as fit
+import law_cases
+import law_circuits
+import program
+import random_circuits
+from law_circuits import LawCircuit, mixing_weight
+from reference import distribution
+
+SHOTS = 40_000
+# Sets the number of probes only; the number of terms is given by hand.
+DELTA = 0.01
+SHARP = 0.99
+
+
+def laws(build):
+    """(circuit, P, P_comp, ξ) of a case."""
+    ideal, companion = LawCircuit(False), LawCircuit(True)
+    build(ideal)
+    build(companion)
+    if ideal.text() != companion.text() or ideal.extent != companion.extent:
+        raise AssertionError("ideal and companion circuit are not the same text")
+    return ideal, distribution(ideal), distribution(companion), ideal.extent
+
+
+class LawByHand(unittest.TestCase):
+    def test_extents(self):
+        """Quantum 3, 181 (2019) for t and rotations; Phys. Rev. A 71, 022316 (2005)
+        for the face-type state; PRX Quantum 2, 010345 (2021) with noise."""
+        diagonal = np.array([1, 1, 0]) / np.sqrt(2)
+        face = np.array([1, 1, 1]) / np.sqrt(3)
+        for bloch, extent in (
+            (diagonal, 1.171572875254), (face, 1.267949192431),
+            (0.9 * diagonal, 1.112994231491), (0.72 * diagonal, 1.007552672718),
+            ((1 - 4 * 0.02 / 3) * diagonal, 1.155951903584),
+            ((1 - 4 * 0.2 / 3) * diagonal, 1.015363158553),
+            ((1 - 4 * 0.1 / 3) * face, 1.183419246269), ((1 - 4 * 0.3 / 3) * face, 1.014359353945),
+            ((np.cos(0.3), np.sin(0.3), 0), 1.1039082456),
+            ((np.cos(1.5), np.sin(1.5), 0), 1.0282626978),
+            (0.7 * diagonal, 1.0), ((0.3, 0.3, 0.4), 1.0),
+        ):
+            self.assertAlmostEqual(law_circuits.nearest_mixture(bloch)[0], extent, 9)
+
+    def test_weights_of_a_rotation(self):
+        """Normalised weights of identity and S: √2 sin(π/4 − θ/2) and √2 sin(θ/2)."""
+        for angle, first in ((0.3, 0.79885468), (np.pi / 4, 0.5), (1.1, 0.30853924)):
+            extent, mixture = law_circuits.rotation_site(angle, 0.0)
+            self.assertAlmostEqual(mixture[0][0], first, 7)
+            self.assertAlmostEqual(
+                extent, (np.cos(angle / 2) + np.tan(np.pi / 8) * np.sin(angle / 2)) ** 2, 9)
+
+    def test_ccz_is_the_sum_of_its_components(self):
+        signs = [sign for _, sign in law_circuits.CCZ_DIAGONALS]
+        total = sum(s * d for s, d in zip(signs, law_circuits.ccz_components())) / 6
+        np.testing.assert_allclose(total, np.diag([1] * 7 + [-1]), atol=1e-14)
+
+    def test_published_companions(self):
+        """Recomputed values: h t h, h rz h, h ccz h."""
+        for build, first in ((law_cases.one_t, 0.75), (law_cases.one_rotation, 0.654269621158),
+                             (law_cases.one_ccz, 0.34375)):
+            self.assertAlmostEqual(laws(build)[2][0], first, 9)
+
+    def test_sum_over_all_draws(self):
+        """The law itself, by adding up every draw of k components with its
+        probability and its unnormalised output, for one t and for one ccz."""
+        components = [np.eye(2), np.diag([1, 1j])]
+        weights = np.linalg.solve(np.array([[1, 1], [1, 1j]]), [1, np.exp(1j * np.pi / 4)])
+        ccz = ([s / 6 for _, s in law_circuits.CCZ_DIAGONALS], law_circuits.ccz_components())
+        h = np.array([[1, 1], [1, -1]]) / np.sqrt(2)
+        for (w, parts), build, width, k in (((weights, components), law_cases.one_t, 1, 3),
+                                            (ccz, law_cases.one_ccz, 3, 3)):
+            layer = np.array([[1.0]])
+            for _ in range(width):
+                layer = np.kron(layer, h)
+            w = np.asarray(w, dtype=complex)
+            norm = abs(w).sum()
+            vectors = [layer @ part @ layer[:, 0] * weight / abs(weight) * norm / k
+                       for weight, part in zip(w, parts)]
+            chance = abs(w) / norm
+            drawn = np.zeros(2 ** width)
+            for draw in itertools.product(range(len(w)), repeat=k):
+                amplitude = sum(vectors[i] for i in draw)
+                drawn += np.prod(chance[list(draw)]) * abs(amplitude) ** 2
+            _, ideal, companion, extent = laws(build)
+            self.assertAlmostEqual(drawn.sum(), (k - 1 + extent) / k, 9)
+            share = mixing_weight(extent, k)
+            np.testing.assert_allclose(
+                drawn / drawn.sum(), (1 - share) * ideal + share * companion, atol=1e-9)
+
+    def test_published_mixtures(self):
+        """h t h at k = 2, 5, 10, 100; h rz(1.1) h at k = 10. Recomputed values."""
+        for build, terms, first in (
+            (law_cases.one_t, 2, 0.797685892458), (law_cases.one_t, 5, 0.830094310254),
+            (law_cases.one_t, 100, 0.852342265120), (law_cases.one_rotation, 10, 0.718626063367),
+        ):
+            _, ideal, companion, extent = laws(build)
+            share = mixing_weight(extent, terms)
+            self.assertAlmostEqual((1 - share) * ideal[0] + share * companion[0], first, 9)
+
+
+class Program(unittest.TestCase):
+    """Drawn shots against the law."""
+
+    def test_cases(self):
+        for index, (name, (build, all_terms)) in enumerate(law_cases.CASES.items()):
+            circuit, ideal, companion, extent = laws(build)
+            for terms in all_terms:
+                with self.subTest(name, terms=terms):
+                    share = mixing_weight(extent, terms)
+                    law = (1 - share) * ideal + share * companion
+                    self.assertGreater(fit.distinguishing_power(law, ideal, SHOTS), SHARP)
+                    out = program.run(circuit, SHOTS, seed=100 + index, readout="probe",
+                                      delta=DELTA, terms=terms, companion=SHOTS)
+                    self.assertAlmostEqual(out.attributes["extent"], extent, 8)
+                    self.assertEqual(out.attributes["terms"], terms)
+                    self.assertAlmostEqual(out.attributes["mixing_weight"], share, 8)
+                    self.assertGreater(
+                        fit.fit_p_value(out.counts(companion=True), companion),
+                        fit.FALSE_ALARM, "companion shots")
+                    self.assertGreater(fit.fit_p_value(out.counts(), law), fit.FALSE_ALARM,
+                                       f"{out.counts() / SHOTS} for {law}")
+
+    def test_random_circuits_with_their_own_companion(self):
+        """Circuits with every gate, channel and feedback: the companion's law is
+        taken from its own shots."""
+        for seed in range(6):
+            with self.subTest(seed=seed):
+                circuit = random_circuits.build(seed, qubits=3, calls=14, measured_early=seed % 3)
+                ideal = distribution(circuit)
+                out = program.run(circuit, SHOTS, seed=300 + seed, readout="probe",
+                                  delta=DELTA, terms=4, companion=SHOTS)
+                self.assertGreater(
+                    fit.mixture_p_value(out.counts(), out.counts(companion=True), ideal,
+                                        out.attributes["mixing_weight"]), fit.FALSE_ALARM)
+
+    def test_many_terms_reach_the_ideal_law(self):
+        """With δ = 0.02 the shots are within δ/2 = 1 % of the ideal law: the
+        empirical distance stays below that plus its own sampling noise."""
+        circuit, ideal, companion, extent = laws(law_cases.entangled_t)
+        out = program.run(circuit, 20_000, seed=77, readout="probe", delta=0.02)
+        share = out.attributes["mixing_weight"]
+        self.assertLessEqual(2 * share, 0.02 * (1 + 1e-9))
+        self.assertEqual(out.attributes["terms"], np.ceil(1 + extent * (2 / 0.02 - 1)))
+        law = (1 - share) * ideal + share * companion
+        self.assertGreater(fit.fit_p_value(out.counts(), law), fit.FALSE_ALARM)
+
+    def test_known_axes_cost_nothing(self):
+        """A t on a qubit in |0⟩ and a ccz with a known control change nothing, and
+        must not add to the extent."""
+        circuit = LawCircuit(False)
+        q = circuit.qubits("q", 3)
+        m = circuit.bits("m", 3)
+        circuit.gate("t", q[0])
+        circuit.gate("h", q[1])
+        circuit.gate("h", q[2])
+        circuit.gate("ccz", *q)
+        circuit.gate("h", q[1])
+        circuit.measure_all(q, m)
+        out = program.run(circuit, 1000, seed=5, readout="probe", terms=2)
+        self.assertAlmostEqual(out.attributes["extent"], 1.0, 12)
+        self.assertGreater(fit.fit_p_value(out.counts(), distribution(circuit)),
+                           fit.FALSE_ALARM)
+
+
+if __name__ == "__main__":
+    unittest.main()
