@@ -167,14 +167,18 @@ mod tests {
 
     #[test]
     fn terms_for_averages_cost_least() {
-        for extent in [1.01_f64, 1.17, 3.5, 12.6, 563.3, 1e5] {
-            let cost = |k: u64| k as f64 * (1.0 + extent / (k as f64 - 1.0)).powi(2);
-            let chosen = terms_for_average(extent.ln()).unwrap();
-            // Rounded up, so the neighbour below may be as good.
-            let least = cost(chosen).min(cost((chosen - 1).max(2)));
-            for k in 2..(4.0 * extent) as u64 + 20 {
-                assert!(least <= cost(k) * (1.0 + 1e-12), "ξ = {extent}, k = {k}");
-            }
+        for i in 0..400 {
+            let extent = 1.01 * 1.03_f64.powi(i);
+            let chosen = terms_for_average(extent.ln()).unwrap() as f64;
+            // The cost k·(1 + ξ/(k−1))², at points a little apart, falls up to
+            // less than one term below the chosen number and rises after it.
+            let cost = |k: f64| k * (1.0 + extent / (k - 1.0)).powi(2);
+            let step = 1e-3 * chosen.sqrt();
+            assert!(cost(chosen + step) > cost(chosen), "ξ = {extent}");
+            assert!(
+                cost(chosen - 1.0 - step) > cost(chosen - 1.0),
+                "ξ = {extent}"
+            );
         }
     }
 
