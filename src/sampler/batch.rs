@@ -51,6 +51,18 @@ pub struct Sampler<'p> {
     seed: u64,
     room: usize,
     keep_events: bool,
+    drawing: Drawing,
+}
+
+/// What is drawn of the sites for a shot.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Drawing {
+    /// Members only, for exact registers.
+    Members,
+    /// Members and so many terms.
+    Terms(usize),
+    /// One term of weight 1.
+    Companion,
 }
 
 /// What one thread needs for a shot.
@@ -70,8 +82,9 @@ impl<'p> Sampler<'p> {
         seed: u64,
         room: usize,
         keep_events: bool,
+        drawing: Drawing,
     ) -> Self {
-        Sampler { program, sparsifier, recorded, seed, room, keep_events }
+        Sampler { program, sparsifier, recorded, seed, room, keep_events, drawing }
     }
 
     /// 64-bit words a shot in a block.
@@ -179,9 +192,13 @@ impl<'p> Sampler<'p> {
         let mut rng = random::generator(self.seed, family, index);
         let Worker { machine, register, draw } = worker;
         for attempts in 1..=MAX_ATTEMPTS {
-            match family {
-                Family::Shots => self.sparsifier.draw(draw, &mut rng),
-                Family::Companion => self.sparsifier.draw_companion(draw, &mut rng),
+            match self.drawing {
+                Drawing::Members => self.sparsifier.draw_members(&mut rng, draw),
+                Drawing::Terms(terms) => {
+                    self.sparsifier.draw_members(&mut rng, draw);
+                    self.sparsifier.draw_terms(terms, &mut rng, draw);
+                }
+                Drawing::Companion => self.sparsifier.draw_companion(&mut rng, draw),
             }
             if machine.attempt(register, draw, &mut rng)? {
                 return Ok(Some(ShotAudit {

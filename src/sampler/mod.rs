@@ -13,7 +13,7 @@ pub mod random;
 
 use std::sync::atomic::{AtomicBool, Ordering};
 
-pub use batch::{Block, Rows, Sampler};
+pub use batch::{Block, Drawing, Rows, Sampler};
 pub use machine::{FaultEvent, ShotAudit};
 pub use random::Family;
 
