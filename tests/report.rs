@@ -3,8 +3,9 @@
 use std::path::Path;
 
 use shottower::report::Summary;
+use shottower::sampler::Rows;
 use shottower::store::{
-    AuditBlock, Block, Finished, Header, Part, RegisterHeader, ShotFile, SiteRow, Writer,
+    AuditBlock, Finished, Header, Part, RegisterHeader, ShotFile, SiteRow, Writer,
     WriterOptions,
 };
 
@@ -56,7 +57,7 @@ fn write(path: &Path, change: impl FnOnce(&mut Header)) -> ShotFile {
     };
     change(&mut header);
     let block = |shots: usize, check: usize, logical: usize, first: usize, second: usize| {
-        let mut block = Block::zeros(shots, 9);
+        let mut block = Rows::zeros(shots, 9);
         for shot in 0..shots {
             let mut set = |on: bool, bits: &[usize]| {
                 bits.iter()
@@ -81,6 +82,7 @@ fn write(path: &Path, change: impl FnOnce(&mut Header)) -> ShotFile {
         attempts: (0..100).map(|shot| 1 + shot % 2).collect(),
         peak_active: (0..100).map(|shot| shot % 8).collect(),
         terms_left: vec![4; 100],
+        norm: vec![1.5; 100],
     };
     writer.append_audit(&audit).unwrap();
     writer.finish(Finished { clipped: 2 }).unwrap();

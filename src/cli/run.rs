@@ -11,7 +11,7 @@ use crate::readout::probe::{Probe, Settings};
 use crate::report::Summary;
 use crate::sampler::{Block, Drawing, Family, Interrupt, Sampler};
 use crate::store::{
-    Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError, Writer,
+    AuditBlock, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError, Writer,
     WriterOptions,
 };
 
@@ -186,7 +186,7 @@ impl<'a> Plan<'a> {
         }
         let sparsifier = Sparsifier::new(program.sites());
         let single = Settings { probes: 1, cap: 1.0 };
-        let write = |block: &Block| Ok(writer.append_companion(&rows_of(block))?);
+        let write = |block: &Block| Ok(writer.append_companion(&block.rows)?);
         let mut progress = Shown::new("companion", self.companion_count(), options.quiet);
         let sampler = self.sampler(program, &sparsifier, MAX_SLOTS, false, Drawing::Companion);
         with_probe(program, single, Sample {
@@ -226,10 +226,10 @@ impl<'a> Plan<'a> {
         let mut clipped = 0;
         let write = |block: &Block| -> Result<(), CommandError> {
             clipped += block.audit.iter().filter(|shot| shot.register.clipped).count() as u64;
-            writer.append_shots(&rows_of(block))?;
-            writer.append_audit(&audit_of(block))?;
+            writer.append_shots(&block.rows)?;
+            writer.append_audit(&AuditBlock::new(&block.audit))?;
             if options.faults {
-                writer.append_faults(&faults_of(block))?;
+                writer.append_faults(&block.faults)?;
             }
             Ok(())
         };
@@ -378,16 +378,3 @@ fn available_memory() -> u64 {
     said.map_or(u64::MAX, |kibibytes| kibibytes * 1024 / 10 * 9)
 }
 
-fn rows_of(block: &Block) -> crate::store::Block {
-    crate::store::Block { shots: block.rows.shots, words: block.rows.words, bits: block.rows.bits.clone() }
-}
-fn audit_of(block: &Block) -> crate::store::AuditBlock {
-    crate::store::AuditBlock {
-        attempts: block.audit.iter().map(|a| a.attempts).collect(),
-        peak_active: block.audit.iter().map(|a| a.peak_active).collect(),
-        terms_left: block.audit.iter().map(|a| a.register.terms_left).collect(),
-    }
-}
-fn faults_of(block: &Block) -> Vec<crate::store::FaultEvent> {
-    block.faults.iter().map(|f| crate::store::FaultEvent { shot: f.shot, location: f.location, pauli: f.pauli }).collect()
-}

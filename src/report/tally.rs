@@ -3,7 +3,8 @@
 use std::collections::HashMap;
 
 use super::Sample;
-use crate::store::{Block, Family, Header, RegisterHeader, ShotFile, StoreError};
+use crate::sampler::Rows;
+use crate::store::{Family, Header, RegisterHeader, ShotFile, StoreError};
 
 /// Counts of one register.
 #[derive(Debug, Clone, Default)]
@@ -46,7 +47,7 @@ impl Tally {
         Ok(tallies)
     }
 
-    fn add(&mut self, block: &Block, first: usize, width: usize, new_words: bool) {
+    fn add(&mut self, block: &Rows, first: usize, width: usize, new_words: bool) {
         self.shots += block.shots as u64;
         if width == 0 {
             return;
@@ -156,7 +157,7 @@ mod tests {
         fn counts_agree_with_a_count_bit_by_bit(
             rows in 1usize..20, first in 0usize..130, width in 1usize..150, seed: u64,
         ) {
-            let mut block = Block::zeros(rows, first + width + 3);
+            let mut block = Rows::zeros(rows, first + width + 3);
             let mut state = seed;
             for shot in 0..rows {
                 for bit in 0..first + width + 3 {

@@ -16,7 +16,7 @@ mod tests;
 use std::sync::atomic::{AtomicBool, Ordering};
 
 pub use batch::{Block, Drawing, Rows, Sampler};
-pub use machine::{FaultEvent, ShotAudit};
+pub use machine::{FaultEvent, ShotAudit, pauli_code};
 pub use random::Family;
 
 /// Why shots could not be drawn.
