@@ -15,9 +15,10 @@ impl<const W: usize> Bits<W> {
     /// Only this bit set.
     #[inline(always)]
     pub(crate) fn one(slot: usize) -> Self {
-        let mut words = [0; W];
-        words[slot / 64] = 1 << (slot % 64);
-        Self(words)
+        // No indexing by the slot: it would force the words out of registers.
+        Self(std::array::from_fn(|word| {
+            u64::from(word == slot / 64) << (slot % 64)
+        }))
     }
 
     /// The bits below `count` set.
@@ -34,7 +35,10 @@ impl<const W: usize> Bits<W> {
     /// Whether this bit is set.
     #[inline(always)]
     pub(crate) fn has(self, slot: usize) -> bool {
-        self.0[slot / 64] >> (slot % 64) & 1 == 1
+        let word = (0..W).fold(0, |found, word| {
+            found | if word == slot / 64 { self.0[word] } else { 0 }
+        });
+        word >> (slot % 64) & 1 == 1
     }
 
     /// Whether no bit is set.
