@@ -5,10 +5,19 @@
 //! before it:
 //!
 //! circuit file → [`circuit`] (flat operations) → [`noise`] (channels in
-//! place) → [`magic`] (sites and ensembles)
+//! place) → [`magic`] (sites and ensembles) → [`clifford`] (frame and terms) →
+//! [`program`] (steps and flip sets) → [`readout`] (registers) → [`sampler`]
+//! (shots) → [`store`] (result file) → [`report`] (summaries) → [`cli`].
 
 #![warn(missing_docs)]
 
 pub mod circuit;
+pub mod cli;
+pub mod clifford;
 pub mod magic;
 pub mod noise;
+pub mod program;
+pub mod readout;
+pub mod report;
+pub mod sampler;
+pub mod store;

@@ -1,1 +1,5 @@
-fn main() {}
+//! Starts the program and sets its exit status; nothing else.
+
+fn main() -> std::process::ExitCode {
+    shottower::cli::main()
+}

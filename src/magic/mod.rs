@@ -7,16 +7,27 @@
 //!
 //! This module knows the noisy circuit, and nothing of frames or terms.
 
+pub mod bloch;
+mod ccz;
+mod ensemble;
+pub mod extent;
+pub mod mixing;
+mod prepared;
+mod rotation;
 pub mod site;
+pub mod sparsify;
+mod splitting;
 
 use std::sync::Arc;
 
 use crate::circuit::{BitExpression, Clifford, PauliProduct};
 use crate::noise::{PauliChannel, ReadoutFlip};
 
+pub use ccz::CczComponent;
 pub use site::{
     CczSite, PreparedMember, PreparedSite, RotationMember, RotationSite, Site, SiteKind, Stabiliser,
 };
+pub use sparsify::{Draw, Sparsifier};
 
 /// A noisy circuit whose non-Clifford gates have become sites.
 #[derive(Debug, Clone)]

@@ -33,6 +33,37 @@ pub enum SiteKind {
     Prepared(PreparedSite),
 }
 
+impl Site {
+    /// A site of this kind; its extent is that of the ensemble.
+    /// `extent_without_noise` is that of the bare gate or of the state before
+    /// any noise, at least 1.
+    pub fn new(
+        kind: SiteKind,
+        operation: u32,
+        qubits: Vec<u32>,
+        extent_without_noise: f64,
+    ) -> Site {
+        Site {
+            extent: kind.extent(),
+            kind,
+            operation,
+            qubits,
+            extent_without_noise,
+        }
+    }
+}
+
+impl SiteKind {
+    /// Extent Ξ, the (Σ|weight|)² of every member; at least 1.
+    pub fn extent(&self) -> f64 {
+        match self {
+            SiteKind::Rotation(rotation) => rotation.extent(),
+            SiteKind::Ccz(_) => CczSite::EXTENT,
+            SiteKind::Prepared(prepared) => prepared.extent(),
+        }
+    }
+}
+
 /// A rotation, possibly dephased about its own axis: an ensemble of rotations.
 #[derive(Debug, Clone)]
 pub struct RotationSite {

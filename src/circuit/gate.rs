@@ -1,7 +1,0 @@
-//! The library gates.
-/// placeholder
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
-pub enum Gate {
-    /// T
-    T,
-}

@@ -1,0 +1,102 @@
+//! The command line.
+//!
+//! Options are declared in [`options`]; each command has a file of its own.
+//! Results go to files, the summary to stdout, everything else to stderr.
+//!
+//! Exit status: 0 done; 1 failed at run time; 2 the input or the options are
+//! wrong and nothing was written; 130 interrupted.
+
+mod input;
+mod message;
+mod options;
+mod progress;
+mod run;
+mod show;
+
+use std::process::ExitCode;
+
+use clap::Parser;
+
+use crate::circuit::Diagnostic;
+use crate::program::CompileError;
+use crate::readout::choice::ChoiceError;
+use crate::sampler::SampleError;
+use crate::store::StoreError;
+
+use options::{Command, Options};
+
+/// Why a command ended without doing all it was asked to.
+#[derive(Debug, thiserror::Error)]
+enum CommandError {
+    /// The input files are wrong; the diagnostics have been shown.
+    #[error("{} error{} in the input", .0, if *.0 == 1 { "" } else { "s" })]
+    Input(usize),
+    /// Something about the options or the input, without a place in a file.
+    #[error("{0}")]
+    Usage(String),
+    /// The circuit cannot be compiled.
+    #[error(transparent)]
+    Compile(#[from] CompileError),
+    /// No read-out can run the circuit as asked.
+    #[error(transparent)]
+    Choice(#[from] ChoiceError),
+    /// Drawing failed.
+    #[error(transparent)]
+    Sample(#[from] SampleError),
+    /// Reading or writing a result file failed.
+    #[error(transparent)]
+    Store(#[from] StoreError),
+    /// The output of a result file that cannot be written was found out before
+    /// any work.
+    #[error(transparent)]
+    Output(StoreError),
+    /// Ctrl-C.
+    #[error("{0}")]
+    Interrupted(String),
+}
+
+impl CommandError {
+    fn status(&self) -> u8 {
+        match self {
+            CommandError::Input(_)
+            | CommandError::Usage(_)
+            | CommandError::Compile(_)
+            | CommandError::Choice(_)
+            | CommandError::Output(_) => 2,
+            CommandError::Sample(_) | CommandError::Store(_) => 1,
+            CommandError::Interrupted(_) => 130,
+        }
+    }
+}
+
+/// Runs the command that the arguments of the process ask for.
+pub fn main() -> ExitCode {
+    let options = match Options::try_parse() {
+        Ok(options) => options,
+        Err(error) => {
+            let status = if error.use_stderr() { 2 } else { 0 };
+            // A closed pipe is no reason to fail while showing help.
+            let _ = error.print();
+            return ExitCode::from(status);
+        }
+    };
+    let result = match &options.command {
+        Command::Run(run) => run::run(run),
+        Command::Show(show) => show::show(show),
+    };
+    match result {
+        Ok(()) => ExitCode::SUCCESS,
+        Err(error) => {
+            message::error(&error.to_string());
+            ExitCode::from(error.status())
+        }
+    }
+}
+
+/// Shows diagnostics and turns errors into the command's error.
+fn refuse(texts: &input::Texts, diagnostics: &[Diagnostic]) -> CommandError {
+    for diagnostic in diagnostics {
+        message::diagnostic(texts, diagnostic);
+    }
+    CommandError::Input(diagnostics.len())
+}

@@ -1,0 +1,187 @@
+//! What may be typed. No other code lives here.
+
+use std::path::PathBuf;
+
+use clap::{Args, Parser, Subcommand, ValueEnum};
+
+/// Draws measurement shots from noisy, T-heavy quantum circuits.
+#[derive(Debug, Parser)]
+#[command(
+    name = "shottower",
+    version,
+    about = "Draws measurement shots from noisy, T-heavy quantum circuits",
+    long_about = "Draws measurement shots from noisy, T-heavy quantum circuits by mixed-state \
+                  stabiliser-rank sampling.\n\nThe shots are approximate synthetic data with a \
+                  stated error. They are no certificate for any hardware.",
+    after_help = "Exit status: 0 done, 1 failed at run time, 2 wrong input or options (nothing \
+                  written), 130 interrupted (finished shots are kept)."
+)]
+pub(super) struct Options {
+    #[command(subcommand)]
+    pub command: Command,
+}
+
+#[derive(Debug, Subcommand)]
+pub(super) enum Command {
+    /// Draw shots of a circuit into an HDF5 file
+    Run(Run),
+    /// Print what a result file holds
+    Show(Show),
+}
+
+/// Draw shots of a circuit into an HDF5 file.
+#[derive(Debug, Args)]
+#[command(after_help = "Examples:\n  \
+    shottower run circuit.qasm --noise bench.toml --shots 100000 --out shots.h5\n  \
+    shottower run circuit.qasm --shots 1000 --delta 0.05 --seed 7 --readout probe --out shots.h5\n  \
+    shottower run sweep.qasm --set angle=0.3 --shots 5000 --out angle-0.3.h5")]
+pub(super) struct Run {
+    /// Circuit file, OpenQASM 3 or 2
+    #[arg(value_name = "CIRCUIT")]
+    pub circuit: PathBuf,
+
+    /// Noise file, TOML
+    #[arg(long, value_name = "FILE")]
+    pub noise: Option<PathBuf>,
+
+    /// Number of shots
+    #[arg(long, value_name = "N")]
+    pub shots: u64,
+
+    /// Trace-norm error δ of the averaged output state, above 0 and below 2
+    #[arg(long, value_name = "D", default_value_t = 0.1, value_parser = delta)]
+    pub delta: f64,
+
+    /// Result file to write
+    #[arg(long, value_name = "FILE.h5")]
+    pub out: PathBuf,
+
+    /// Seed; the same seed gives the same bits [default: random, recorded]
+    #[arg(long, value_name = "S")]
+    pub seed: Option<u64>,
+
+    /// How outcomes are read out
+    #[arg(long, value_enum, default_value_t = ReadoutOption::Auto)]
+    pub readout: ReadoutOption,
+
+    /// Number of stabiliser terms, or "average" for the number that makes
+    /// companion-corrected averages cheapest [default: from δ]
+    #[arg(long, value_name = "K", value_parser = terms)]
+    pub terms: Option<TermsOption>,
+
+    /// Number of companion shots [default: as many as shots; 0 for dense]
+    #[arg(long, value_name = "M")]
+    pub companion: Option<u64>,
+
+    /// Number of threads [default: all cores]
+    #[arg(long, value_name = "T", value_parser = clap::value_parser!(u16).range(1..=4096))]
+    pub threads: Option<u16>,
+
+    /// Draw only part I of N of the shots
+    #[arg(long, value_name = "I/N", value_parser = part)]
+    pub part: Option<(u64, u64)>,
+
+    /// Overwrite an existing output
+    #[arg(long)]
+    pub force: bool,
+
+    /// Record which noise events fired, shot by shot
+    #[arg(long)]
+    pub faults: bool,
+
+    /// Give an `input` of the circuit its value
+    #[arg(long, value_name = "NAME=VALUE", value_parser = assignment)]
+    pub set: Vec<(String, f64)>,
+
+    /// Merge noise into the non-Clifford places it stands next to
+    #[arg(long, value_enum, default_value_t = Switch::On)]
+    pub absorb: Switch,
+
+    /// Most operations after unrolling
+    #[arg(long, value_name = "N", default_value_t = 1_000_000)]
+    pub max_ops: usize,
+
+    /// Print the summary as JSON
+    #[arg(long)]
+    pub json: bool,
+
+    /// No progress and no summary
+    #[arg(long, short)]
+    pub quiet: bool,
+}
+
+/// Print what a result file holds.
+#[derive(Debug, Args)]
+#[command(after_help = "Examples:\n  shottower show shots.h5\n  \
+    shottower show shots.h5 --json | python3 -m json.tool")]
+pub(super) struct Show {
+    /// Result file
+    #[arg(value_name = "FILE.h5")]
+    pub file: PathBuf,
+
+    /// Print JSON
+    #[arg(long)]
+    pub json: bool,
+}
+
+/// How outcomes are read out.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum ReadoutOption {
+    /// The cheaper one for this circuit
+    Auto,
+    /// Stabiliser terms with fast norm estimation
+    Probe,
+    /// Exact amplitudes of the active qubits (at most 28 of them)
+    Dense,
+}
+
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum Switch {
+    /// Yes
+    On,
+    /// No
+    Off,
+}
+
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum TermsOption {
+    Average,
+    Fixed(u64),
+}
+
+fn delta(text: &str) -> Result<f64, String> {
+    let value: f64 = text.parse().map_err(|_| "expected a number".to_owned())?;
+    if value > 0.0 && value < 2.0 {
+        Ok(value)
+    } else {
+        Err("a trace-norm error lies above 0 and below 2".to_owned())
+    }
+}
+
+fn terms(text: &str) -> Result<TermsOption, String> {
+    if text == "average" {
+        return Ok(TermsOption::Average);
+    }
+    match text.parse() {
+        Ok(count @ 1..=u64::MAX) => Ok(TermsOption::Fixed(count)),
+        _ => Err("expected a number of terms from 1, or the word average".to_owned()),
+    }
+}
+
+fn part(text: &str) -> Result<(u64, u64), String> {
+    let expected = "expected I/N with I from 1 to N, for example 2/8";
+    let (index, count) = text.split_once('/').ok_or(expected)?;
+    let index: u64 = index.parse().map_err(|_| expected)?;
+    let count: u64 = count.parse().map_err(|_| expected)?;
+    if index >= 1 && index <= count { Ok((index, count)) } else { Err(expected.to_owned()) }
+}
+
+fn assignment(text: &str) -> Result<(String, f64), String> {
+    let expected = "expected NAME=VALUE with a number, for example angle=0.3";
+    let (name, value) = text.split_once('=').ok_or(expected)?;
+    let value: f64 = value.trim().parse().map_err(|_| expected)?;
+    if !value.is_finite() || name.trim().is_empty() {
+        return Err(expected.to_owned());
+    }
+    Ok((name.trim().to_owned(), value))
+}

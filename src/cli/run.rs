@@ -1,0 +1,371 @@
+//! `run`: draw shots of a circuit into a result file.
+
+use crate::circuit::Register as BitRegister;
+use crate::magic::{self, SiteKind, Sparsifier};
+use crate::program::Program;
+use crate::readout::Register;
+use crate::readout::choice::{self, Choice, Readout, Terms, Wish};
+use crate::readout::dense::{self, Dense};
+use crate::readout::probe::{Probe, Settings};
+use crate::report::Summary;
+use crate::sampler::{Block, Family, Interrupt, Sampler};
+use crate::store::{
+    Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError, Writer,
+    WriterOptions,
+};
+
+use super::input::{self, Input, Reading};
+use super::options::{ReadoutOption, Run, Switch, TermsOption};
+use super::progress::Shown;
+use super::{CommandError, message};
+
+static INTERRUPT: Interrupt = Interrupt::new();
+
+/// Draws shots of a circuit into a result file.
+pub(super) fn run(options: &Run) -> Result<(), CommandError> {
+    if options.out.exists() && !options.force {
+        return Err(CommandError::Output(StoreError::Exists { path: options.out.clone() }));
+    }
+    let input = input::load(&Reading {
+        circuit: &options.circuit,
+        noise: options.noise.as_deref(),
+        set: &options.set,
+        max_operations: options.max_ops,
+        absorb: options.absorb == Switch::On,
+    })?;
+    let threads = start_threads(options.threads)?;
+    let log_extent = magic::log_extent(input.program.sites());
+    let wish = Wish {
+        readout: match options.readout {
+            ReadoutOption::Auto => None,
+            ReadoutOption::Probe => Some(Readout::Probe),
+            ReadoutOption::Dense => Some(Readout::Dense),
+        },
+        delta: options.delta,
+        terms: match options.terms {
+            None => Terms::FromDelta,
+            Some(TermsOption::Average) => Terms::Average,
+            Some(TermsOption::Fixed(terms)) => Terms::Fixed(terms),
+        },
+        threads,
+        memory: available_memory(),
+    };
+    let choice = choice::choose(&input.program, log_extent, &wish)?;
+    let seed = options.seed.unwrap_or_else(rand::random);
+    let plan = Plan::new(options, &input, &choice, log_extent, seed)?;
+    catch_interrupts()?;
+    plan.draw(options)?;
+    if !options.quiet {
+        let file = ShotFile::open(&options.out)?;
+        super::show::print(&Summary::from_file(&file)?, options.json);
+    }
+    plan.ending()
+}
+
+/// One run, decided.
+struct Plan<'a> {
+    input: &'a Input,
+    choice: Choice,
+    header: Header,
+    recorded: Vec<u32>,
+    seed: u64,
+    /// Indices of the shots and of the companion shots.
+    shots: std::ops::Range<u64>,
+    companion: std::ops::Range<u64>,
+    finished: std::cell::Cell<u64>,
+}
+
+/// Part I of N of the indices below `count`.
+fn share(count: u64, part: Part) -> std::ops::Range<u64> {
+    let end = |index: u64| (u128::from(count) * u128::from(index) / u128::from(part.count)) as u64;
+    end(part.index - 1)..end(part.index)
+}
+
+impl<'a> Plan<'a> {
+    fn new(
+        options: &Run,
+        input: &'a Input,
+        choice: &Choice,
+        log_extent: f64,
+        seed: u64,
+    ) -> Result<Self, CommandError> {
+        let companion = match options.companion {
+            Some(count) => count,
+            None if choice.readout == Readout::Dense => 0,
+            None => options.shots,
+        };
+        if companion > 0 && input.program.has_damping() {
+            return Err(CommandError::Usage(
+                "companion shots cannot be drawn of a circuit that damps an entangled qubit: \
+                 leave out --companion"
+                    .to_owned(),
+            ));
+        }
+        let part = options.part.map_or(Part::default(), |(index, count)| Part { index, count });
+        let registers: Vec<&BitRegister> =
+            input.circuit.registers.iter().filter(|register| register.recorded).collect();
+        let recorded = registers
+            .iter()
+            .flat_map(|register| register.first..register.first + register.width)
+            .map(|bit| bit as u32)
+            .collect();
+        let mut settings = vec![
+            ("absorb".to_owned(), if options.absorb == Switch::On { "on" } else { "off" }.to_owned()),
+        ];
+        settings.extend(options.set.iter().map(|(name, value)| (format!("set {name}"), value.to_string())));
+        if let Some(probe) = choice.probe {
+            settings.push(("probes".to_owned(), probe.probes.to_string()));
+        }
+        let texts = &input.texts;
+        let header = Header {
+            circuit_name: texts.circuit_name.clone(),
+            circuit: texts.circuit.clone(),
+            noise_name: options.noise.is_some().then(|| texts.noise_name.clone()),
+            noise: options.noise.is_some().then(|| texts.noise.clone()),
+            title: input.title.clone(),
+            qubits: Some(input.circuit.qubits.len() as u64),
+            seed,
+            delta: options.terms.is_none().then_some(options.delta),
+            readout: choice.readout.word().to_owned(),
+            log_extent,
+            terms: choice.terms,
+            mixing_weight: choice.mixing_weight,
+            shots_total: options.shots,
+            part,
+            settings,
+            registers: registers
+                .iter()
+                .map(|register| RegisterHeader {
+                    name: register.name.clone(),
+                    role: register.role.word().to_owned(),
+                    width: register.width,
+                })
+                .collect(),
+            sites: site_rows(input),
+            locations: location_rows(input),
+        };
+        Ok(Plan {
+            input,
+            choice: *choice,
+            header,
+            recorded,
+            seed,
+            shots: share(options.shots, part),
+            companion: share(companion, part),
+            finished: std::cell::Cell::new(0),
+        })
+    }
+
+    /// Draws all shots and writes the file.
+    fn draw(&self, options: &Run) -> Result<(), CommandError> {
+        let writer_options = WriterOptions {
+            force: options.force,
+            companion: !self.companion.is_empty(),
+            faults: options.faults,
+        };
+        let mut writer = Writer::create(&options.out, &self.header, writer_options)
+            .map_err(CommandError::Output)?;
+        let program = &self.input.program;
+        // Companion shots come first: they are cheap, and an interrupted run
+        // can then be corrected as well.
+        self.draw_companion(program, options, &mut writer)?;
+        let finished = self.draw_shots(program, options, &mut writer)?;
+        writer.finish(finished)?;
+        Ok(())
+    }
+
+    fn draw_companion(
+        &self,
+        program: &Program,
+        options: &Run,
+        writer: &mut Writer,
+    ) -> Result<(), CommandError> {
+        if self.companion.is_empty() {
+            return Ok(());
+        }
+        let sparsifier = Sparsifier::new(program.sites(), 1);
+        let single = Settings { probes: 1, cap: 1.0 };
+        let write = |block: &Block| Ok(writer.append_companion(&block.rows)?);
+        let mut progress = Shown::new("companion", self.companion_count(), options.quiet);
+        let sampler = self.sampler(program, &sparsifier, crate::program::MAX_SLOTS, false);
+        with_probe(program.slots(), single, Sample {
+            sampler: &sampler,
+            family: Family::Companion,
+            range: self.companion.clone(),
+            progress: &mut progress,
+            sink: write,
+        })?;
+        progress.finish();
+        Ok(())
+    }
+
+    fn companion_count(&self) -> u64 {
+        self.companion.end - self.companion.start
+    }
+
+    fn sampler<'p>(
+        &self,
+        program: &'p Program,
+        sparsifier: &'p Sparsifier,
+        room: usize,
+        keep_events: bool,
+    ) -> Sampler<'p> {
+        Sampler::new(program, sparsifier, self.recorded.clone(), self.seed, room, keep_events)
+    }
+
+    fn draw_shots(
+        &self,
+        program: &Program,
+        options: &Run,
+        writer: &mut Writer,
+    ) -> Result<Finished, CommandError> {
+        let sparsifier = Sparsifier::new(program.sites(), self.choice.terms.unwrap_or(1));
+        let mut clipped = 0;
+        let write = |block: &Block| -> Result<(), CommandError> {
+            clipped += block.audit.iter().filter(|shot| shot.register.clipped).count() as u64;
+            writer.append_shots(&block.rows)?;
+            writer.append_audit(&block.audit)?;
+            if options.faults {
+                writer.append_faults(&block.faults)?;
+            }
+            Ok(())
+        };
+        let total = self.shots.end - self.shots.start;
+        let mut progress = Shown::new("shots", total, options.quiet);
+        let room = match self.choice.readout {
+            Readout::Dense => dense::MAX_ACTIVE,
+            Readout::Probe => crate::program::MAX_SLOTS,
+        };
+        let sampler = self.sampler(program, &sparsifier, room, options.faults);
+        let sample = Sample {
+            sampler: &sampler,
+            family: Family::Shots,
+            range: self.shots.clone(),
+            progress: &mut progress,
+            sink: write,
+        };
+        let active = program.first().peak_active;
+        let done = match self.choice.probe {
+            None => sample.with(|| Dense::new(active))?,
+            Some(settings) => with_probe(program.slots(), settings, sample)?,
+        };
+        progress.finish();
+        self.finished.set(done);
+        Ok(Finished { clipped })
+    }
+
+    /// What to say at the end: an interruption is an error of its own.
+    fn ending(&self) -> Result<(), CommandError> {
+        let (done, wanted) = (self.finished.get(), self.shots.end - self.shots.start);
+        if done == wanted {
+            return Ok(());
+        }
+        Err(CommandError::Interrupted(format!(
+            "interrupted: {done} of {wanted} shots were finished and written"
+        )))
+    }
+}
+
+/// A call of the sampler, waiting for its register.
+struct Sample<'a, 'p, S> {
+    sampler: &'a Sampler<'p>,
+    family: Family,
+    range: std::ops::Range<u64>,
+    progress: &'a mut Shown,
+    sink: S,
+}
+
+impl<S: FnMut(&Block) -> Result<(), CommandError>> Sample<'_, '_, S> {
+    fn with<R: Register + Send>(self, make: impl Fn() -> R + Sync) -> Result<u64, CommandError> {
+        self.sampler.sample(self.family, self.range, make, &INTERRUPT, self.progress, self.sink)
+    }
+}
+
+/// Runs with terms of the smallest width that holds the slots.
+fn with_probe<S: FnMut(&Block) -> Result<(), CommandError>>(
+    slots: usize,
+    settings: Settings,
+    sample: Sample<'_, '_, S>,
+) -> Result<u64, CommandError> {
+    match slots {
+        0..=64 => sample.with(|| Probe::<1>::new(slots, settings)),
+        65..=128 => sample.with(|| Probe::<2>::new(slots, settings)),
+        _ => sample.with(|| Probe::<4>::new(slots, settings)),
+    }
+}
+
+fn site_rows(input: &Input) -> Vec<SiteRow> {
+    let row = |(site, kept): (&magic::Site, bool)| SiteRow {
+        line: line(input, site.operation),
+        qubits: names(input, &site.qubits),
+        kind: match site.kind {
+            SiteKind::Rotation(_) => "rotation",
+            SiteKind::Ccz(_) => "ccz",
+            SiteKind::Prepared(_) => "prepared",
+        }
+        .to_owned(),
+        extent_without_noise: site.extent_without_noise,
+        extent: site.extent,
+        members: match &site.kind {
+            SiteKind::Rotation(rotation) => rotation.members.len(),
+            SiteKind::Ccz(_) => 1,
+            SiteKind::Prepared(prepared) => prepared.members.len(),
+        } as u32,
+        kept,
+    };
+    input.program.all_sites().map(row).collect()
+}
+
+fn location_rows(input: &Input) -> Vec<LocationRow> {
+    let row = |location: &crate::program::Location| LocationRow {
+        line: line(input, location.operation),
+        kind: location.kind.word().to_owned(),
+        qubits: names(input, &location.qubits),
+        probability: location.probability,
+    };
+    input.program.locations().iter().map(row).collect()
+}
+
+fn line(input: &Input, operation: u32) -> u32 {
+    let span = input.circuit.operations[operation as usize].span;
+    span.line_and_column(&input.circuit.source).0 as u32
+}
+
+fn names(input: &Input, qubits: &[u32]) -> String {
+    let name = |&qubit: &u32| input.circuit.qubits[qubit as usize].as_str();
+    qubits.iter().map(name).collect::<Vec<_>>().join(", ")
+}
+
+/// Sets up the thread pool; says how many threads there are.
+fn start_threads(wanted: Option<u16>) -> Result<usize, CommandError> {
+    let mut builder = rayon::ThreadPoolBuilder::new();
+    if let Some(wanted) = wanted {
+        builder = builder.num_threads(usize::from(wanted));
+    }
+    builder
+        .build_global()
+        .map_err(|error| CommandError::Usage(format!("cannot start threads: {error}")))?;
+    Ok(rayon::current_num_threads())
+}
+
+/// The first Ctrl-C asks the work to stop; the second one ends the program.
+fn catch_interrupts() -> Result<(), CommandError> {
+    ctrlc::set_handler(|| {
+        if INTERRUPT.raised() {
+            std::process::exit(130);
+        }
+        INTERRUPT.raise();
+        message::note("stopping at the next shot; finished shots are kept");
+    })
+    .map_err(|error| CommandError::Usage(format!("cannot watch for Ctrl-C: {error}")))
+}
+
+/// Bytes of memory that may be used: nine tenths of what the system says is
+/// available, or no limit where it does not say.
+fn available_memory() -> u64 {
+    let said = std::fs::read_to_string("/proc/meminfo").ok().and_then(|text| {
+        let line = text.lines().find(|line| line.starts_with("MemAvailable:"))?;
+        line.split_whitespace().nth(1)?.parse::<u64>().ok()
+    });
+    said.map_or(u64::MAX, |kibibytes| kibibytes * 1024 / 10 * 9)
+}

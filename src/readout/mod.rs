@@ -1,0 +1,80 @@
+//! Read-outs: the ways a register holds |Ω⟩ and gives up outcomes.
+//!
+//! A [`Register`] follows the steps of a compiled program on the active qubits.
+//! [`dense`] holds all amplitudes of one drawn member exactly; [`probe`] holds
+//! stabiliser terms and measures by fast norm estimation. The loop over steps
+//! is not here: one loop drives every register.
+//!
+//! This module knows sites, terms and primitives, and nothing of circuits,
+//! faults, classical bits or files.
+
+pub mod choice;
+pub mod dense;
+pub mod probe;
+
+use rand_pcg::Pcg64Dxsm;
+
+use crate::magic::Draw;
+use crate::program::Primitive;
+
+/// The generator of a shot.
+pub type ShotRng = Pcg64Dxsm;
+
+/// A shot's active qubits. Slots not in use are idle in |0⟩.
+///
+/// `flipped` says that the sign of the slot's axis is −: the gate D(x) acts as
+/// D(x⊕1).
+pub trait Register {
+    /// Begins a shot: every slot idle, sites as drawn.
+    fn start(&mut self, draw: &Draw);
+
+    /// An idle slot becomes active in |+⟩.
+    fn plus(&mut self, slot: u16);
+
+    /// An idle slot becomes active in the drawn state of a prepared site.
+    fn prepare(&mut self, slot: u16, site: u32, draw: &Draw);
+
+    /// The unitary (1 + i^a·Q)/√2.
+    fn primitive(&mut self, primitive: &Primitive);
+
+    /// CNOT.
+    fn controlled_not(&mut self, control: u16, target: u16);
+
+    /// The drawn gate of a rotation site.
+    fn rotate(&mut self, slot: u16, site: u32, flipped: bool, draw: &Draw);
+
+    /// diag(1, i), or diag(i, 1) if flipped.
+    fn quarter_turn(&mut self, slot: u16, flipped: bool);
+
+    /// A CCZ site.
+    fn ccz(&mut self, slots: [u16; 3], flipped: [bool; 3], site: u32, draw: &Draw);
+
+    /// Controlled Z between two slots.
+    fn controlled_z(&mut self, a: u16, b: u16);
+
+    /// Z on a slot.
+    fn z(&mut self, slot: u16);
+
+    /// Measures Z of a slot and makes it idle. None: the shot must be drawn
+    /// anew.
+    fn measure(&mut self, slot: u16, rng: &mut ShotRng) -> Option<bool>;
+
+    /// Amplitude damping along ±Z of a slot with decay probability `gamma`.
+    /// Returns whether it decayed; then the register is left projected on the
+    /// value 1, and the caller flips it. None: the shot must be drawn anew.
+    fn damp(&mut self, slot: u16, flipped: bool, gamma: f64, rng: &mut ShotRng) -> Option<bool>;
+
+    /// What there is to tell of the shot.
+    fn diagnostics(&self) -> Diagnostics;
+}
+
+/// What a register tells of a finished shot.
+#[derive(Debug, Clone, Copy, Default, PartialEq)]
+pub struct Diagnostics {
+    /// Terms that were not projected to zero; 0 where there are no terms.
+    pub terms_left: u32,
+    /// Whether an acceptance ratio had to be clipped to 1.
+    pub clipped: bool,
+    /// Estimate of ‖Ω‖² at the first inner measurement, if one was made.
+    pub norm: Option<f64>,
+}

@@ -1,0 +1,223 @@
+//! Many shots on all threads, handed on in order.
+
+use std::sync::Mutex;
+use std::time::Instant;
+
+use rayon::prelude::*;
+
+use crate::magic::{Draw, Sparsifier};
+use crate::program::Program;
+use crate::readout::Register;
+
+use super::machine::{FaultEvent, Machine, ShotAudit};
+use super::random::{self, Family};
+use super::{Interrupt, Progress, SampleError};
+
+/// Most draws of one shot before giving up.
+const MAX_ATTEMPTS: u32 = 10_000_000;
+
+/// Wall time a batch of shots should take.
+const BATCH_SECONDS: f64 = 0.1;
+
+/// Finished shots in order of their index.
+#[derive(Debug, Clone, Default, PartialEq)]
+pub struct Block {
+    /// Index of the first shot.
+    pub first: u64,
+    /// The recorded bits.
+    pub rows: Rows,
+    /// One entry a shot.
+    pub audit: Vec<ShotAudit>,
+    /// Noise events that fired, in order of shots.
+    pub faults: Vec<FaultEvent>,
+}
+
+/// Recorded bits, one row a shot; bit i of a row is recorded bit i.
+#[derive(Debug, Clone, Default, PartialEq, Eq)]
+pub struct Rows {
+    /// Number of rows.
+    pub shots: usize,
+    /// 64-bit words a row.
+    pub words: usize,
+    /// The rows, one after another.
+    pub bits: Vec<u64>,
+}
+
+/// Draws shots of a program.
+pub struct Sampler<'p> {
+    program: &'p Program,
+    sparsifier: &'p Sparsifier,
+    recorded: Vec<u32>,
+    seed: u64,
+    room: usize,
+    keep_events: bool,
+}
+
+/// What one thread needs for a shot.
+struct Worker<'p, R> {
+    machine: Machine<'p>,
+    register: R,
+    draw: Draw,
+}
+
+impl<'p> Sampler<'p> {
+    /// A sampler that records the given classical bits of each shot, for
+    /// registers with room for `room` active qubits.
+    pub fn new(
+        program: &'p Program,
+        sparsifier: &'p Sparsifier,
+        recorded: Vec<u32>,
+        seed: u64,
+        room: usize,
+        keep_events: bool,
+    ) -> Self {
+        Sampler { program, sparsifier, recorded, seed, room, keep_events }
+    }
+
+    /// 64-bit words a shot in a block.
+    pub fn words(&self) -> usize {
+        self.recorded.len().div_ceil(64)
+    }
+
+    /// Draws the shots of `range`, `terms` terms each, and hands finished blocks to `sink` in
+    /// order. Returns how many shots were handed on: fewer than asked for only if
+    /// `interrupt` was raised or the sink said stop by returning an error.
+    pub fn sample<R, E>(
+        &self,
+        family: Family,
+        range: std::ops::Range<u64>,
+        make: impl Fn() -> R + Sync,
+        interrupt: &Interrupt,
+        progress: &mut dyn Progress,
+        mut sink: impl FnMut(&Block) -> Result<(), E>,
+    ) -> Result<u64, E>
+    where
+        R: Register + Send,
+        E: From<SampleError>,
+    {
+        let pool: Mutex<Vec<Worker<'p, R>>> = Mutex::new(Vec::new());
+        let threads = rayon::current_num_threads().max(1) as u64;
+        let chunks = 4 * threads;
+        let mut size = 1u64;
+        let mut next = range.start;
+        while next < range.end && !interrupt.raised() {
+            let started = Instant::now();
+            let left = range.end - next;
+            let starts: Vec<u64> = (0..chunks.min(left.div_ceil(size)))
+                .map(|chunk| next + chunk * size)
+                .collect();
+            let blocks: Vec<Result<Block, SampleError>> = starts
+                .par_iter()
+                .map(|&first| {
+                    let taken = lock(&pool).pop();
+                    let mut worker = taken.unwrap_or_else(|| self.worker(make()));
+                    let shots = size.min(range.end - first);
+                    let block = self.block(family, first, shots, &mut worker, interrupt);
+                    lock(&pool).push(worker);
+                    block
+                })
+                .collect();
+            let mut done = 0;
+            for (block, &first) in blocks.into_iter().zip(&starts) {
+                let block = block?;
+                let attempts = block.audit.iter().map(|shot| u64::from(shot.attempts)).sum();
+                sink(&block)?;
+                done += block.rows.shots as u64;
+                progress.advance(block.rows.shots as u64, attempts);
+                if (block.rows.shots as u64) < size.min(range.end - first) {
+                    return Ok(next + done - range.start);
+                }
+            }
+            next += done;
+            let seconds = started.elapsed().as_secs_f64().max(1e-6);
+            let wanted = size as f64 * BATCH_SECONDS / seconds;
+            size = (wanted as u64).clamp(1, (4 * size).min(1 << 14));
+        }
+        Ok(next - range.start)
+    }
+
+    fn worker<R: Register>(&self, register: R) -> Worker<'p, R> {
+        Worker {
+            machine: Machine::new(self.program, self.room, self.keep_events),
+            register,
+            draw: Draw::new(),
+        }
+    }
+
+    /// Draws up to `shots` shots, fewer if interrupted.
+    fn block<R: Register>(
+        &self,
+        family: Family,
+        first: u64,
+        shots: u64,
+        worker: &mut Worker<'p, R>,
+        interrupt: &Interrupt,
+    ) -> Result<Block, SampleError> {
+        let rows = Rows { words: self.words(), ..Rows::default() };
+        let mut block = Block { first, rows, ..Block::default() };
+        for index in first..first + shots {
+            if interrupt.raised() {
+                break;
+            }
+            if let Some(audit) = self.shot(family, index, worker, interrupt)? {
+                self.record(index, audit, &worker.machine, &mut block);
+            } else {
+                break;
+            }
+        }
+        Ok(block)
+    }
+
+    /// Draws one shot until it is accepted; none if interrupted.
+    fn shot<R: Register>(
+        &self,
+        family: Family,
+        index: u64,
+        worker: &mut Worker<'p, R>,
+        interrupt: &Interrupt,
+    ) -> Result<Option<ShotAudit>, SampleError> {
+        let mut rng = random::generator(self.seed, family, index);
+        let Worker { machine, register, draw } = worker;
+        for attempts in 1..=MAX_ATTEMPTS {
+            match family {
+                Family::Shots => self.sparsifier.draw(draw, &mut rng),
+                Family::Companion => self.sparsifier.draw_companion(draw, &mut rng),
+            }
+            if machine.attempt(register, draw, &mut rng)? {
+                return Ok(Some(ShotAudit {
+                    attempts,
+                    peak_active: machine.peak_active() as u16,
+                    register: register.diagnostics(),
+                }));
+            }
+            if interrupt.raised() {
+                return Ok(None);
+            }
+        }
+        Err(SampleError::NeverAccepted { shot: index, attempts: MAX_ATTEMPTS })
+    }
+
+    /// Appends a finished shot to a block.
+    fn record(&self, index: u64, audit: ShotAudit, machine: &Machine<'_>, block: &mut Block) {
+        let Rows { shots, words, bits } = &mut block.rows;
+        let start = bits.len();
+        bits.resize(start + *words, 0);
+        for (position, &bit) in self.recorded.iter().enumerate() {
+            if machine.bit(bit) {
+                bits[start + position / 64] |= 1 << (position % 64);
+            }
+        }
+        block.faults.extend(
+            machine
+                .events()
+                .iter()
+                .map(|&(location, pauli)| FaultEvent { shot: index, location, pauli }),
+        );
+        block.audit.push(audit);
+        *shots += 1;
+    }
+}
+
+fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
+    mutex.lock().unwrap_or_else(|poisoned| poisoned.into_inner())
+}

@@ -1,0 +1,82 @@
+//! Shots: one at a time, and many in parallel.
+//!
+//! [`machine::Machine`] runs the steps of a program on a register: the only
+//! loop over steps there is. [`batch`] runs many shots on all threads and hands
+//! finished ones on in order. The bits of a shot depend on the seed, its family
+//! and its index alone, never on threads, batches or parts.
+//!
+//! This module knows programs and registers, and nothing of files or terminals.
+
+pub mod batch;
+pub mod machine;
+pub mod random;
+
+use std::sync::atomic::{AtomicBool, Ordering};
+
+pub use batch::{Block, Rows, Sampler};
+pub use machine::{FaultEvent, ShotAudit};
+pub use random::Family;
+
+/// Why shots could not be drawn.
+#[derive(Debug, Clone, PartialEq, thiserror::Error)]
+pub enum SampleError {
+    /// A later part of the circuit could not be compiled.
+    #[error(transparent)]
+    Compile(#[from] crate::program::CompileError),
+    /// A branch of the circuit needs more active qubits than the register has.
+    #[error(
+        "a branch of the circuit keeps {found} qubits active at once, the read-out has room for \
+         {room}: choose --readout probe"
+    )]
+    TooManyActive {
+        /// What the branch needs.
+        found: usize,
+        /// What there is.
+        room: usize,
+    },
+    /// A shot was drawn anew too often.
+    #[error(
+        "shot {shot} was drawn anew {attempts} times without being accepted: raise --terms or \
+         lower --delta"
+    )]
+    NeverAccepted {
+        /// Index of the shot.
+        shot: u64,
+        /// How often it was drawn.
+        attempts: u32,
+    },
+}
+
+/// Who is told how far the work is. Called from one thread.
+pub trait Progress {
+    /// So many more shots are done, after so many draws in all.
+    fn advance(&mut self, shots: u64, attempts: u64);
+}
+
+/// Tells nobody.
+pub struct Silent;
+
+impl Progress for Silent {
+    fn advance(&mut self, _shots: u64, _attempts: u64) {}
+}
+
+/// A flag that asks running work to stop at the next shot.
+#[derive(Debug, Default)]
+pub struct Interrupt(AtomicBool);
+
+impl Interrupt {
+    /// A flag not yet raised.
+    pub const fn new() -> Self {
+        Interrupt(AtomicBool::new(false))
+    }
+
+    /// Asks the work to stop.
+    pub fn raise(&self) {
+        self.0.store(true, Ordering::Relaxed);
+    }
+
+    /// Whether the work was asked to stop.
+    pub fn raised(&self) -> bool {
+        self.0.load(Ordering::Relaxed)
+    }
+}
