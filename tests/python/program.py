@@ -60,14 +60,16 @@ class Outcome:
 
 
 def run(circuit, shots, seed, readout="dense", delta=0.1, terms=None, companion=None,
-        extra=()):
+        extra=(), quiet=True):
     """Draws shots of a `Circuit` and reads the result."""
     with tempfile.TemporaryDirectory() as folder:
         folder = pathlib.Path(folder)
         (folder / "circuit.qasm").write_text(circuit.text())
         arguments = ["run", folder / "circuit.qasm", "--shots", shots, "--seed", seed,
                      "--delta", delta, "--readout", readout, "--out", folder / "out.h5",
-                     "--quiet", *extra]
+                     *extra]
+        if quiet:
+            arguments.append("--quiet")
         if circuit.rules:
             (folder / "noise.toml").write_text(circuit.noise_text())
             arguments += ["--noise", folder / "noise.toml"]
