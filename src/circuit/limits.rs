@@ -24,6 +24,12 @@ pub const MAX_ORDERED_WIDTH: usize = 64;
 /// allowed: unrolling stops when they are used up, whether or not it yields
 /// operations.
 pub const STEPS_PER_OPERATION: u64 = 64;
+/// Steps of one pass of a loop, about as long as so many looked-up names.
+pub const STEPS_PER_PASS: u64 = 8;
+/// Steps of one statement.
+pub const STEPS_PER_STATEMENT: u64 = 4;
+/// Steps of one formula over bits each time an operator takes it up.
+pub const STEPS_PER_FORMULA: u64 = 4;
 /// The fewest steps allowed, whatever the operations.
 pub const MIN_STEPS: u64 = 1_000_000;
 /// Bytes of the unrolled circuit for each operation allowed.

@@ -288,10 +288,15 @@ impl<'a> Lowering<'a> {
             Target::Defined(definition) => {
                 let outcome = self.run_defined(definition, instance, before, after);
                 match outcome {
-                    Err(Failure::Error(error)) if error.help.is_none() && self.frame.is_none() => {
+                    Err(Failure::Error(mut error)) if self.frame.is_none() => {
                         let (line, _) = span.line_and_column(self.source);
-                        let help = format!("in the call of `{}` on line {line}", definition.name);
-                        Err(error.with_help(help).into())
+                        let name = &definition.name;
+                        let place = format!("this is in the call of `{name}` on line {line}");
+                        error.help = Some(match error.help {
+                            Some(help) => format!("{help}; {place}"),
+                            None => place,
+                        });
+                        Err(error.into())
                     }
                     outcome => outcome,
                 }

@@ -11,7 +11,7 @@ use super::{Failure, Lowered, Lowering, bits};
 use crate::circuit::BitExpression;
 use crate::circuit::ast::{Expression, For, If, Scalar, Statement, Values};
 use crate::circuit::diagnostic::{Diagnostic, Span};
-use crate::circuit::limits::MAX_NESTING;
+use crate::circuit::limits::{MAX_NESTING, STEPS_PER_PASS};
 
 impl<'a> Lowering<'a> {
     /// `if (…) … else …`
@@ -173,7 +173,7 @@ impl<'a> Lowering<'a> {
 
     /// One pass of a loop. Whether the next one is worth a try.
     fn pass(&mut self, repeated: &For<'a>, value: Value, place: Span, span: Span) -> Lowered<bool> {
-        self.budget.step(1, span)?;
+        self.budget.step(STEPS_PER_PASS, span)?;
         let value = self.typed(&repeated.kind, value, place)?;
         let failures = self.failures;
         let scopes = self.scopes.len();

@@ -127,17 +127,25 @@ fn action_bytes(action: &Action) -> u64 {
     (words * size_of::<u32>()) as u64
 }
 
+/// About what the allocator adds to each piece of memory.
+const OVERHEAD: usize = 32;
+
 /// Bytes that annotated noise takes.
 pub(super) fn noise_bytes(noise: &AnnotatedNoise) -> u64 {
     let calls = noise.before.iter().chain(&noise.after);
     let bytes = calls.map(|call| {
         size_of::<ChannelCall>()
             + call.name.len()
+            + 2 * OVERHEAD
             + call
                 .arguments
                 .iter()
                 .map(|argument| {
-                    size_of::<ChannelArgument>() + argument.name.as_ref().map_or(0, String::len)
+                    size_of::<ChannelArgument>()
+                        + argument
+                            .name
+                            .as_ref()
+                            .map_or(0, |name| name.len() + OVERHEAD)
                 })
                 .sum::<usize>()
     });

@@ -8,6 +8,7 @@ use super::{Failure, Lowered, Lowering, registers};
 use crate::circuit::BitExpression;
 use crate::circuit::ast::{Binary, Expression, Name, Node, NodeKind, Operand, Scalar};
 use crate::circuit::diagnostic::{Diagnostic, Span};
+use crate::circuit::limits::STEPS_PER_FORMULA;
 
 /// How two integers divide.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -134,12 +135,17 @@ impl<'a> Lowering<'a> {
     /// Counts the work on a register, and whether its formulas would fit.
     fn charge(&mut self, value: &Value, place: Span) -> Lowered<()> {
         if let Value::Bits(bits) = value {
-            let count = bits.len() as u64;
-            self.budget.step(count, place)?;
-            self.budget
-                .would_hold(count * size_of::<BitExpression>() as u64, place)?;
+            self.charge_bits(bits.len(), place)?;
         }
         Ok(())
+    }
+
+    /// Counts the work on so many formulas, and whether they would fit.
+    fn charge_bits(&mut self, count: usize, place: Span) -> Lowered<()> {
+        let count = count as u64;
+        self.budget.step(count * STEPS_PER_FORMULA, place)?;
+        let bytes = count * size_of::<BitExpression>() as u64;
+        self.budget.would_hold(bytes, place)
     }
 
     fn named_value(&mut self, name: Name<'a>) -> Lowered<Value> {
@@ -151,9 +157,7 @@ impl<'a> Lowering<'a> {
                 ..
             } => {
                 let count = places.len();
-                self.budget.step(count as u64, name.span)?;
-                self.budget
-                    .would_hold(count as u64 * size_of::<BitExpression>() as u64, name.span)?;
+                self.charge_bits(count, name.span)?;
                 let bits = (0..count).map(|position| BitExpression::Bit(places.at(position)));
                 Ok(Value::Bits(bits.collect()))
             }
@@ -232,14 +236,15 @@ impl<'a> Lowering<'a> {
     /// The value of an expression that must be a size of at least 1.
     pub(super) fn size(&mut self, expression: &Expression<'a>, what: &str) -> Lowered<usize> {
         let value = self.integer(expression, what)?;
-        match usize::try_from(value) {
-            Ok(size) if size > 0 => Ok(size.min(1 << 40)),
-            _ => Err(Diagnostic::error(
+        if value < 1 {
+            return Err(Diagnostic::error(
                 expression.span,
                 format!("{what} must be at least 1, found {value}"),
             )
-            .into()),
+            .into());
         }
+        // Larger than every limit, and far from overflow.
+        Ok(usize::try_from(value).map_or(1 << 40, |size| size.min(1 << 40)))
     }
 }
 

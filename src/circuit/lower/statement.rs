@@ -3,6 +3,7 @@
 use super::{Failure, Lowered, Lowering};
 use crate::circuit::ast::{Annotation, Name, Statement, StatementKind};
 use crate::circuit::diagnostic::Diagnostic;
+use crate::circuit::limits::STEPS_PER_STATEMENT;
 
 const PUT_BEFORE: &str = "put it before a gate, `measure`, `reset`, `delay` or `barrier`";
 
@@ -58,7 +59,7 @@ impl<'a> Lowering<'a> {
     pub(super) fn statement(&mut self, statement: &Statement<'a>) -> Lowered<()> {
         let span = statement.span;
         let annotations = statement.annotations.as_slice();
-        self.budget.step(1, span)?;
+        self.budget.step(STEPS_PER_STATEMENT, span)?;
         let plain = |lowering: &Self, what: &str| {
             lowering.refuse_annotations(annotations, what, PUT_BEFORE)
         };
