@@ -10,6 +10,8 @@
 //! 0, 1, 2 of its call.
 
 mod expand;
+#[cfg(test)]
+pub(super) mod matrices;
 mod modify;
 #[cfg(test)]
 mod tests;
