@@ -11,10 +11,12 @@ pub mod bloch;
 mod ccz;
 mod ensemble;
 pub mod extent;
+pub mod mixing;
 mod prepared;
 mod rotation;
 mod schedule;
 pub mod site;
+pub mod sparsify;
 mod splitting;
 
 use std::sync::Arc;
@@ -27,6 +29,7 @@ pub use schedule::{ScheduleOptions, schedule};
 pub use site::{
     CczSite, PreparedMember, PreparedSite, RotationMember, RotationSite, Site, SiteKind, Stabiliser,
 };
+pub use sparsify::{Draw, Sparsifier};
 
 /// A noisy circuit whose non-Clifford gates have become sites.
 #[derive(Debug, Clone)]
