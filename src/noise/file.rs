@@ -298,6 +298,9 @@ impl<'a> Reader<'a> {
                 self.problems.push(
                     Diagnostic {
                         span: span.or(Some(whole)),
+                        help: problem.help.or_else(|| {
+                            Some("write for example channel = \"dephasing(0.01)\"".into())
+                        }),
                         ..problem
                     }
                     .in_noise_file(),

@@ -1,6 +1,7 @@
 //! Tests of the noise file and of attaching, on circuits built by hand.
 
 mod attachment;
+mod from_text;
 mod laws;
 mod malformed;
 mod matching;

@@ -410,6 +410,19 @@ fn member_gate(qubits: usize, member: &magic::RotationMember, axis: &PauliProduc
     )
 }
 
+impl State {
+    /// Probability that the classical bits satisfy a condition.
+    pub(super) fn probability(&self, holds: impl Fn(u64) -> bool) -> f64 {
+        let trace = |matrix: &Matrix| -> f64 {
+            (0..matrix.size)
+                .map(|i| matrix.entries[i * (matrix.size + 1)].re)
+                .sum()
+        };
+        let cases = self.cases.iter().filter(|(bits, _)| holds(**bits));
+        cases.map(|(_, matrix)| trace(matrix)).sum()
+    }
+}
+
 /// The largest difference between two states, over all cases.
 pub(super) fn distance(a: &State, b: &State) -> f64 {
     let keys = a.cases.keys().chain(b.cases.keys());

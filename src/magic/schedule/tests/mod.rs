@@ -2,6 +2,7 @@
 //! against published formulas.
 
 mod dense;
+mod laws;
 mod random;
 mod values;
 
