@@ -97,9 +97,9 @@ fn random_forms_are_uniform_quadratic_forms() {
         let pair = |i: usize, j: usize| (form.value(&mask(1 << i | 1 << j)) + 8 - a[i] - a[j]) % 4;
         for i in 0..5 {
             diagonal[i][usize::from(a[i])] += 1;
-            for j in 0..i {
+            for (j, count) in pairs[i].iter_mut().enumerate().take(i) {
                 assert_eq!(pair(i, j) % 2, 0);
-                pairs[i][j] += u32::from(pair(i, j) / 2);
+                *count += u32::from(pair(i, j) / 2);
             }
         }
         for x in 0..32 {

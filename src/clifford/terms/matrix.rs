@@ -7,6 +7,8 @@
 //! width. They reach over all rows below a bound; rows in between that mean
 //! nothing to the caller may hold anything, their results are to be masked out.
 
+use std::cmp::Ordering;
+
 use super::bits::Bits;
 
 /// Rows done together. Bounds and strides are multiples of it.
@@ -47,6 +49,19 @@ fn spread(word: u64, i: usize) -> u64 {
     (word >> i & 1).wrapping_neg()
 }
 
+/// Σ of the words whose number is a bit of `set`, each masked by number.
+#[inline(always)]
+fn masked_sum(blocks: &[[u64; LANES]], set: u64, mask: impl Fn(usize) -> u64) -> u64 {
+    let mut sum = [0; LANES];
+    for (block, words) in blocks.iter().enumerate() {
+        let base = LANES * block;
+        for (lane, (sum, word)) in sum.iter_mut().zip(words).enumerate() {
+            *sum ^= word & spread(set >> base, lane) & mask(base + lane);
+        }
+    }
+    sum.into_iter().fold(0, |all, lane| all ^ lane)
+}
+
 /// The bits of a set from row `base` on.
 #[inline(always)]
 fn bits_from<const W: usize>(set: Bits<W>, base: usize) -> u64 {
@@ -78,32 +93,21 @@ impl<S: AsRef<[u64]>, const W: usize> Matrix<S, W> {
     #[inline(always)]
     pub(crate) fn combine(&self, a: Bits<W>) -> (Bits<W>, bool) {
         let mut sum = Bits::ZERO;
-        let mut pairs = Bits::ZERO;
-        let bound = Self::bound(a);
-        for w in 0..W {
-            let mut lanes = [0; LANES];
-            let mut below = [0; LANES];
-            for (block, rows) in self.plane(w, bound).iter().enumerate() {
-                let base = LANES * block;
-                let bits = bits_from(a, base);
-                // The bits below row `base`, in this plane.
-                let earlier = Bits::<W>::first_of_word(base, w);
-                let own = base / 64 == w;
-                for lane in 0..LANES {
-                    let row = rows[lane] & spread(bits, lane);
-                    lanes[lane] ^= row;
-                    let more = if own {
-                        ((1 << lane) - 1) << (base % 64)
-                    } else {
-                        0
-                    };
-                    below[lane] ^= row & (earlier | more);
-                }
+        // Bit p: the parity of R_qp over the q ∈ a above p.
+        let mut above = Bits::ZERO;
+        for (w, (sum, above)) in sum.0.iter_mut().zip(&mut above.0).enumerate() {
+            let plane = self.plane(w, Self::bound(a));
+            for (word, blocks) in plane.chunks(64 / LANES).enumerate() {
+                let part = masked_sum(blocks, a.0[word], |_| !0);
+                *sum ^= part;
+                *above ^= match word.cmp(&w) {
+                    Ordering::Less => 0,
+                    Ordering::Equal => masked_sum(blocks, a.0[word], |q| (1 << q) - 1),
+                    Ordering::Greater => part,
+                };
             }
-            sum.0[w] = lanes.into_iter().fold(0, |all, lane| all ^ lane);
-            pairs.0[w] = below.into_iter().fold(0, |all, lane| all ^ lane);
         }
-        (sum, (pairs & a).parity())
+        (sum, (above & a).parity())
     }
 
     /// The rows among `set` with a bit at this slot.
@@ -114,8 +118,8 @@ impl<S: AsRef<[u64]>, const W: usize> Matrix<S, W> {
         for (word, blocks) in plane.chunks(64 / LANES).enumerate() {
             let mut lanes = [0; LANES];
             for (block, rows) in blocks.iter().enumerate() {
-                for lane in 0..LANES {
-                    lanes[lane] |= (rows[lane] >> (slot % 64) & 1) << (LANES * block);
+                for (lane, row) in lanes.iter_mut().zip(rows) {
+                    *lane |= (row >> (slot % 64) & 1) << (LANES * block);
                 }
             }
             found.0[word] = pack(lanes);
@@ -133,16 +137,18 @@ impl<S: AsRef<[u64]>, const W: usize> Matrix<S, W> {
             let end = (start + 64 / LANES).min(bound / LANES);
             // Per lane one byte a block, and its parity at the end.
             let mut lanes = [0; LANES];
-            for block in start..end {
-                for lane in 0..LANES {
-                    let mut bits = 0;
-                    for w in 0..W {
-                        bits ^= planes[w][block][lane] & other.0[w];
+            for (byte, block) in (start..end).enumerate() {
+                let mut bits = [0; LANES];
+                for (plane, other) in planes.iter().zip(other.0) {
+                    for (bits, row) in bits.iter_mut().zip(plane[block]) {
+                        *bits ^= row & other;
                     }
+                }
+                for (lane, mut bits) in lanes.iter_mut().zip(bits) {
                     bits ^= bits >> 32;
                     bits ^= bits >> 16;
                     bits ^= bits >> 8;
-                    lanes[lane] |= (bits & 0xff) << (8 * (block - start));
+                    *lane |= (bits & 0xff) << (8 * byte);
                 }
             }
             for lane in &mut lanes {
@@ -187,11 +193,72 @@ impl<S: AsRef<[u64]> + AsMut<[u64]>, const W: usize> Matrix<S, W> {
             for (block, rows) in plane.as_chunks_mut::<LANES>().0.iter_mut().enumerate() {
                 let base = LANES * block;
                 let (one, two) = (bits_from(first, base), bits_from(second, base));
-                for lane in 0..LANES {
-                    rows[lane] ^=
-                        (on_first.0[w] & spread(one, lane)) ^ (on_second.0[w] & spread(two, lane));
+                for (lane, row) in rows.iter_mut().enumerate() {
+                    let first = on_first.0[w] & spread(one, lane);
+                    *row ^= first ^ (on_second.0[w] & spread(two, lane));
                 }
             }
+        }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use rand::{Rng, RngExt, SeedableRng};
+    use rand_pcg::Pcg64Mcg;
+
+    use super::*;
+
+    /// All passes against the same sums bit by bit, with rubbish in the rows
+    /// that do not take part.
+    fn check<const W: usize>(rows: usize, rng: &mut Pcg64Mcg) {
+        let draw = |rng: &mut Pcg64Mcg| Bits::<W>(std::array::from_fn(|_| rng.next_u64()));
+        let mut matrix = Matrix::<_, W>::zero(rows);
+        for p in 0..rows {
+            matrix.set_row(p, draw(rng));
+        }
+        let set = draw(rng) & Bits::first(rows);
+        let other = draw(rng);
+        let slot = rng.random_range(0..64 * W);
+
+        let mut sum = Bits::ZERO;
+        let mut pairs = false;
+        for q in set.ones() {
+            for p in set.ones().filter(|&p| p < q) {
+                pairs ^= matrix.row(q).has(p);
+            }
+            sum ^= matrix.row(q);
+        }
+        assert_eq!(matrix.combine(set), (sum, pairs));
+        for p in 0..64 * W {
+            let inside = set.has(p);
+            let bit = inside && matrix.row(p).has(slot);
+            assert_eq!(matrix.column(set, slot).has(p), bit);
+            let odd = inside && (matrix.row(p) & other).weight() % 2 == 1;
+            assert_eq!(matrix.odd_overlaps(set, other).has(p), odd);
+        }
+
+        let before = matrix.clone();
+        let second = draw(rng) & Bits::first(rows);
+        let (one, two) = (draw(rng), draw(rng));
+        matrix.add((set, one), (second, two));
+        for p in 0..rows {
+            let expected = before.row(p) ^ one.when(set.has(p)) ^ two.when(second.has(p));
+            assert_eq!(matrix.row(p), expected);
+        }
+    }
+
+    #[test]
+    fn passes_agree_with_single_bits() {
+        let mut rng = Pcg64Mcg::seed_from_u64(3);
+        for rows in 0..=64 {
+            check::<1>(rows, &mut rng);
+        }
+        for rows in [5, 63, 64, 65, 72, 100, 128] {
+            check::<2>(rows, &mut rng);
+        }
+        for rows in [64, 129, 191, 250, 256] {
+            check::<4>(rows, &mut rng);
         }
     }
 }

@@ -5,6 +5,7 @@
 pub(crate) mod bits;
 pub(crate) mod matrix;
 pub(crate) mod phase;
+mod quadratic;
 pub(crate) mod term;
 
 #[cfg(test)]
@@ -12,7 +13,9 @@ pub(crate) mod tests;
 
 use num_complex::Complex64;
 
-pub use crate::magic::Stabiliser;
+use crate::magic::Stabiliser;
+
+pub use quadratic::QuadraticPhase;
 
 use bits::Bits;
 use matrix::{Matrix, stride_of};
@@ -20,20 +23,6 @@ use term::{Head, Term};
 
 /// A set of slots: bit s mod 64 of word s / 64 stands for slot s.
 pub type Mask<const W: usize> = [u64; W];
-
-/// A diagonal Clifford gate with entries ±1 on three slots.
-///
-/// On |x0 x1 x2⟩ it is (−1) to the number of: `negative`, x_i with `z[i]`,
-/// x0·x1 with `cz[0]`, x1·x2 with `cz[1]`, x0·x2 with `cz[2]`.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, Default)]
-pub struct QuadraticPhase {
-    /// Z on each of the slots.
-    pub z: [bool; 3],
-    /// CZ on the pairs (0, 1), (1, 2), (0, 2).
-    pub cz: [bool; 3],
-    /// A minus sign on everything.
-    pub negative: bool,
-}
 
 /// A list of phase-sensitive stabiliser states with weights, the *terms* of
 /// one sum Ω = Σ_j φ_j, on the same slots.
@@ -48,8 +37,7 @@ pub struct QuadraticPhase {
 ///
 /// # Panics
 ///
-/// Methods panic on an index or slot out of range. Masks must not have bits
-/// from the capacity on.
+/// Methods panic on an index or slot that is not below the length or capacity.
 #[derive(Debug, Clone)]
 pub struct Terms<const W: usize> {
     slots: usize,
@@ -119,16 +107,18 @@ impl<const W: usize> Terms<W> {
         self.heads[index].label
     }
 
-    /// Turns idle |0⟩ into |+⟩, in all terms.
+    /// Turns idle |0⟩ into |+⟩, in all terms. The slot must be idle in all of
+    /// them.
     pub fn plus(&mut self, slot: usize) {
         self.prepare(slot, |_| Stabiliser::Plus);
     }
 
-    /// Turns idle |0⟩ into the state chosen for the label.
+    /// Turns idle |0⟩ into the state chosen for the label. The slot must be
+    /// idle in all terms.
     pub fn prepare(&mut self, slot: usize, mut choose: impl FnMut(u32) -> Stabiliser) {
         self.check(slot);
         self.each(|mut term| {
-            debug_assert!(term.head.is_plain_zero(slot), "slot {slot} is in use");
+            debug_assert!(term.is_idle(slot), "slot {slot} is in use");
             let state = choose(term.head.label);
             term.prepare(slot, state);
         });
@@ -141,7 +131,11 @@ impl<const W: usize> Terms<W> {
     /// projector; terms it annihilates are dropped.
     pub fn primitive(&mut self, phase: u8, x: &Mask<W>, z: &Mask<W>) {
         let (x, z) = (Bits(*x), Bits(*z));
-        debug_assert!(((x | z) & !Bits::first(self.slots)).is_zero());
+        assert!(
+            ((x | z) & !Bits::first(self.slots)).is_zero(),
+            "the operator reaches beyond the capacity of {} slots",
+            self.slots
+        );
         self.retain(|mut term| term.primitive(phase & 3, x, z));
     }
 

@@ -6,7 +6,8 @@ use num_complex::Complex64;
 use super::bits::Bits;
 use super::matrix::Matrix;
 use super::phase::{Diagonal, Factor};
-use super::{QuadraticPhase, Stabiliser};
+use super::quadratic::{PAIRS, QuadraticPhase};
+use crate::magic::Stabiliser;
 
 /// Everything of a term but its rows.
 #[derive(Debug, Clone, Copy)]
@@ -33,12 +34,6 @@ impl<const W: usize> Head<W> {
             factor: Factor::new(weight),
             label,
         }
-    }
-
-    /// Whether the slot is no pivot and not shifted; with no row's bit there
-    /// either, it is idle.
-    pub(crate) fn is_plain_zero(&self, slot: usize) -> bool {
-        !self.pivots.has(slot) && !self.shift.has(slot)
     }
 
     /// L_s: the parameters the bit of this slot depends on.
@@ -115,6 +110,7 @@ impl<const W: usize> Term<'_, W> {
         let lambda = slope ^ (sum & pivots);
 
         let d = (sum ^ x) & !pivots;
+        // The lowest: passes go up to the last pivot.
         if let Some(pivot) = d.lowest() {
             self.grow(pivot, d, lambda, e);
             true
@@ -124,7 +120,7 @@ impl<const W: usize> Term<'_, W> {
             true
         } else {
             self.head.factor.double_halves(1);
-            self.restrict(lambda, lambda.lowest(), e == 2)
+            self.restrict(lambda, e == 2)
         }
     }
 
@@ -150,11 +146,12 @@ impl<const W: usize> Term<'_, W> {
         });
     }
 
-    /// Keeps the points with λ·y = σ, amplitudes unchanged; `pivot`, a member
-    /// of λ, leaves the parameters. Returns whether anything is left.
+    /// Keeps the points with λ·y = σ, amplitudes unchanged; a member of λ
+    /// leaves the parameters. Returns whether anything is left.
     #[inline(always)]
-    fn restrict(&mut self, lambda: Bits<W>, pivot: Option<usize>, sigma: bool) -> bool {
-        let Some(pivot) = pivot else {
+    fn restrict(&mut self, lambda: Bits<W>, sigma: bool) -> bool {
+        // The highest: passes go up to the last pivot.
+        let Some(pivot) = lambda.highest() else {
             return !sigma;
         };
         let here = Bits::one(pivot);
@@ -197,6 +194,11 @@ impl<const W: usize> Term<'_, W> {
         if s.offset {
             self.head.factor.turn_quarters(s.quarters);
         }
+    }
+
+    /// Whether the slot is in |0⟩, in a product with everything else.
+    pub(crate) fn is_idle(&self, slot: usize) -> bool {
+        !self.head.shift.has(slot) && self.head.dependence(&self.rows, slot).is_zero()
     }
 
     /// Turns idle |0⟩ into a stabiliser state.
@@ -246,8 +248,8 @@ impl<const W: usize> Term<'_, W> {
                 sign ^= offsets[i];
             }
         }
-        for (pair, (i, j)) in [(0, 1), (1, 2), (0, 2)].into_iter().enumerate() {
-            if !phase.cz[pair] {
+        for ((i, j), cz) in PAIRS.into_iter().zip(phase.cz) {
+            if !cz {
                 continue;
             }
             self.rows.add((forms[i], forms[j]), (forms[j], forms[i]));
@@ -279,7 +281,7 @@ impl<const W: usize> Term<'_, W> {
     pub(crate) fn measured(&mut self, slot: usize, value: bool) -> bool {
         let lambda = self.head.dependence(&self.rows, slot);
         let sigma = self.head.shift.has(slot) ^ value;
-        let kept = self.restrict(lambda, lambda.lowest(), sigma);
+        let kept = self.restrict(lambda, sigma);
         self.head.shift &= !Bits::one(slot);
         kept
     }

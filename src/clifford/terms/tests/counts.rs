@@ -104,7 +104,7 @@ fn annihilated_terms_are_dropped_and_come_back() {
         let labels: Vec<_> = (0..terms.len()).map(|i| terms.label(i)).collect();
         assert_eq!(labels, [1, 2, 4, 5]);
         let mut plus = Dense::new(1, Complex64::new(2f64.sqrt(), 0.0));
-        plus.prepare(0, crate::clifford::terms::Stabiliser::Plus);
+        plus.prepare(0, crate::magic::Stabiliser::Plus);
         let gone = Dense::new(1, Complex64::ZERO);
         let vectors: Vec<_> = (0..6)
             .map(|j| {

@@ -4,7 +4,8 @@
 use num_complex::Complex64;
 use rand::{Rng, RngExt};
 
-use crate::clifford::terms::{Mask, QuadraticPhase, Stabiliser, Terms};
+use crate::clifford::terms::{Mask, QuadraticPhase, Terms};
+use crate::magic::Stabiliser;
 
 /// i^n.
 pub(crate) fn quarter(n: usize) -> Complex64 {
@@ -96,9 +97,9 @@ impl Dense {
         for (y, a) in self.0.iter_mut().enumerate() {
             let bit = qubits.map(|qubit| y >> qubit & 1 == 1);
             let mut minus = phase.negative;
-            for i in 0..3 {
-                minus ^= phase.z[i] && bit[i];
-            }
+            minus ^= phase.z[0] && bit[0];
+            minus ^= phase.z[1] && bit[1];
+            minus ^= phase.z[2] && bit[2];
             minus ^= phase.cz[0] && bit[0] && bit[1];
             minus ^= phase.cz[1] && bit[1] && bit[2];
             minus ^= phase.cz[2] && bit[0] && bit[2];

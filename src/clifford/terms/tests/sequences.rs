@@ -5,7 +5,8 @@ use rand::{Rng, RngExt, SeedableRng};
 use rand_pcg::Pcg64Mcg;
 
 use super::dense::{Dense, Layout, compare};
-use crate::clifford::terms::{QuadraticPhase, Stabiliser, Terms};
+use crate::clifford::terms::{QuadraticPhase, Terms};
+use crate::magic::Stabiliser;
 
 const STATES: [Stabiliser; 6] = [
     Stabiliser::Zero,
@@ -79,10 +80,10 @@ impl<const W: usize> Pair<W> {
         }
         match rng.random_range(0..9) {
             0..3 => {
-                let x = rng.random_range(0..1 << r);
+                let x: usize = rng.random_range(0..1 << r);
                 let z = rng.random_range(0..1 << r);
                 // Three in four unitary, so that the terms live a while.
-                let hermitian = ((x & z) as usize).count_ones() as u8 & 1;
+                let hermitian = (x & z).count_ones() as u8 & 1;
                 let unitary = u8::from(rng.random_bool(0.75));
                 let phase = hermitian ^ unitary ^ (2 * rng.random_range(0..2u8));
                 self.terms
