@@ -110,7 +110,7 @@ precision   δ = 0.5, k = 7 terms, λ = 0.3333 (read-out walk)
 shots       100, 50 companion shots
 seed        42
 settings    absorb=on
-sampling    1.5 draws a shot, at most 7 active qubits, 2 shots clipped
+sampling    at most 7 active qubits, 1.5 draws a shot, 2 shots clipped
 
 syndrome (check, 4 bits)  as drawn                corrected
   any nonzero             0.300 ± 0.046           0.250 ± 0.077

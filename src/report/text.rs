@@ -9,6 +9,8 @@ use super::summary::{Outcome, Quantity, RegisterSummary, Summary};
 const MOST_BITS: usize = 16;
 /// Outcomes of wider registers are printed in hexadecimal.
 const MOST_BINARY_DIGITS: usize = 28;
+/// Least width of the column of names.
+const LEAST_LABEL: usize = 24;
 
 impl Display for Summary {
     fn fmt(&self, out: &mut Formatter<'_>) -> fmt::Result {
@@ -36,18 +38,26 @@ impl Display for Summary {
             line(out, "settings", &settings.join("  "))?;
         }
         if let Some(draws) = &self.draws {
-            let mut text = format!(
-                "{} draws a shot, at most {} active qubits",
-                format_plain(draws.mean_attempts),
-                draws.peak_active
-            );
+            let mut text = match draws.peak_active {
+                1 => "at most 1 active qubit".to_owned(),
+                active => format!("at most {active} active qubits"),
+            };
+            // Exact read-outs accept every draw.
+            if self.terms.is_some() {
+                text += &format!(", {} draws a shot", format_plain(draws.mean_attempts));
+            }
             if self.clipped > 0 {
                 text += &format!(", {} shots clipped", self.clipped);
             }
             line(out, "sampling", &text)?;
         }
+        let labels = self
+            .registers
+            .iter()
+            .map(|register| self.label_width(register));
+        let label = labels.fold(LEAST_LABEL, usize::max);
         for register in &self.registers {
-            self.register(out, register)?;
+            self.register(out, register, label)?;
         }
         self.notes(out)
     }
@@ -71,9 +81,10 @@ impl Summary {
 
     fn sites_line(&self) -> String {
         let count = self.sites.count;
+        let places = if count == 1 { "place" } else { "places" };
         match count - self.sites.kept {
-            0 => format!("{count} non-Clifford places"),
-            idle => format!("{count} non-Clifford places, {idle} of them without effect"),
+            0 => format!("{count} non-Clifford {places}"),
+            idle => format!("{count} non-Clifford {places}, {idle} of them without effect"),
         }
     }
 
@@ -120,28 +131,29 @@ impl Summary {
         self.registers.iter().any(corrected)
     }
 
-    fn register(&self, out: &mut Formatter<'_>, register: &RegisterSummary) -> fmt::Result {
-        let bits = if register.width == 1 { "bit" } else { "bits" };
-        let title = format!(
-            "{} ({}, {} {bits})",
-            register.name, register.role, register.width
-        );
+    /// Columns that the first column of a register takes.
+    fn label_width(&self, register: &RegisterSummary) -> usize {
+        let rows = rows_of(register, self.shots);
+        let labels = rows.iter().map(|(label, _)| label.chars().count() + 2);
+        labels.fold(title(register).chars().count(), usize::max)
+    }
+
+    fn register(
+        &self,
+        out: &mut Formatter<'_>,
+        register: &RegisterSummary,
+        label: usize,
+    ) -> fmt::Result {
+        let title = title(register);
         writeln!(out)?;
         if self.shots == 0 || register.width == 0 {
             return writeln!(out, "{title}");
         }
-        let rows = rows_of(register, self.shots);
-        let label = rows
-            .iter()
-            .map(|(label, _)| label.chars().count() + 2)
-            .chain([title.chars().count(), 24])
-            .max()
-            .unwrap_or(0);
         let with_correction = self.has_correction();
         let heading = if with_correction { "corrected" } else { "" };
         let heading = format!("{title:label$}  {:22}  {heading}", "as drawn");
         writeln!(out, "{}", heading.trim_end())?;
-        for (name, quantity) in rows {
+        for (name, quantity) in rows_of(register, self.shots) {
             let show =
                 |estimate| Option::as_ref(estimate).map_or_else(String::new, format_estimate);
             let text = format!(
@@ -186,6 +198,15 @@ impl Summary {
         }
         Ok(())
     }
+}
+
+/// Name, role and width of a register.
+fn title(register: &RegisterSummary) -> String {
+    let bits = if register.width == 1 { "bit" } else { "bits" };
+    let RegisterSummary {
+        name, role, width, ..
+    } = register;
+    format!("{name} ({role}, {width} {bits})")
 }
 
 /// One line of the head.
