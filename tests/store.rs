@@ -2,8 +2,9 @@
 
 use std::path::Path;
 
+use shottower::sampler::{FaultEvent, Rows};
 use shottower::store::{
-    AuditBlock, Block, Family, FaultEvent, Finished, Header, LocationRow, Part, RegisterHeader,
+    AuditBlock, Family, Finished, Header, LocationRow, Part, RegisterHeader,
     ShotFile, SiteRow, StoreError, Writer, WriterOptions,
 };
 
@@ -66,8 +67,8 @@ fn header() -> Header {
 }
 
 /// Random-looking rows that differ from shot to shot.
-fn rows(shots: usize, bits: usize, seed: u64) -> Block {
-    let mut block = Block::zeros(shots, bits);
+fn rows(shots: usize, bits: usize, seed: u64) -> Rows {
+    let mut block = Rows::zeros(shots, bits);
     let mut state = seed;
     for shot in 0..shots {
         for bit in 0..bits {
@@ -82,8 +83,8 @@ fn rows(shots: usize, bits: usize, seed: u64) -> Block {
     block
 }
 
-fn gather(file: &ShotFile, family: Family) -> Block {
-    let mut all = Block::zeros(0, file.header().bits());
+fn gather(file: &ShotFile, family: Family) -> Rows {
+    let mut all = Rows::zeros(0, file.header().bits());
     for block in file.blocks(family) {
         let block = block.unwrap();
         all.shots += block.shots;
@@ -92,8 +93,8 @@ fn gather(file: &ShotFile, family: Family) -> Block {
     all
 }
 
-fn slice(block: &Block, from: usize, to: usize) -> Block {
-    Block {
+fn slice(block: &Rows, from: usize, to: usize) -> Rows {
+    Rows {
         shots: to - from,
         words: block.words,
         bits: block.bits[from * block.words..to * block.words].to_vec(),
@@ -116,6 +117,7 @@ fn everything_comes_back() {
         attempts: (0..40_000).map(|i| i % 7 + 1).collect(),
         peak_active: (0..40_000).map(|i| (i % 5) as u16).collect(),
         terms_left: (0..40_000).collect(),
+        norm: vec![f64::NAN; 40_000],
     };
     let faults: Vec<FaultEvent> = (0..20_000)
         .map(|i| FaultEvent {

@@ -9,9 +9,17 @@
 //! This module knows nothing of noise channels, sites or simulation: an
 //! annotation is kept as its name and evaluated arguments.
 
+mod ast;
 pub mod diagnostic;
 pub mod elementary;
 mod gate;
+mod lexer;
+mod limits;
+mod lower;
+mod parse;
+mod parser;
+#[cfg(test)]
+mod tests;
 
 use std::sync::Arc;
 
@@ -19,7 +27,8 @@ use smallvec::SmallVec;
 
 pub use diagnostic::{Diagnostic, Severity, Source, Span};
 pub use elementary::{Clifford, Elementary, Pauli, PauliProduct};
-pub use gate::Gate;
+pub use gate::{Expansion, Gate, Parameters};
+pub use parse::{ParseOptions, parse, parse_channel};
 
 /// A circuit as flat operations.
 #[derive(Debug, Clone)]

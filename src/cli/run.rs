@@ -1,16 +1,17 @@
 //! `run`: draw shots of a circuit into a result file.
 
 use crate::circuit::Register as BitRegister;
-use crate::magic::{self, SiteKind, Sparsifier};
-use crate::program::Program;
+use crate::magic::mixing::log_extent;
+use crate::magic::{Site, SiteKind, Sparsifier};
+use crate::program::{Location, MAX_SLOTS, Program};
 use crate::readout::Register;
 use crate::readout::choice::{self, Choice, Readout, Terms, Wish};
 use crate::readout::dense::{self, Dense};
 use crate::readout::probe::{Probe, Settings};
 use crate::report::Summary;
-use crate::sampler::{Block, Family, Interrupt, Sampler};
+use crate::sampler::{Block, Drawing, Family, Interrupt, Sampler};
 use crate::store::{
-    Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError, Writer,
+    AuditBlock, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError, Writer,
     WriterOptions,
 };
 
@@ -34,7 +35,7 @@ pub(super) fn run(options: &Run) -> Result<(), CommandError> {
         absorb: options.absorb == Switch::On,
     })?;
     let threads = start_threads(options.threads)?;
-    let log_extent = magic::log_extent(input.program.sites());
+    let log_extent = log_extent(input.program.sites());
     let wish = Wish {
         readout: match options.readout {
             ReadoutOption::Auto => None,
@@ -183,12 +184,12 @@ impl<'a> Plan<'a> {
         if self.companion.is_empty() {
             return Ok(());
         }
-        let sparsifier = Sparsifier::new(program.sites(), 1);
+        let sparsifier = Sparsifier::new(program.sites());
         let single = Settings { probes: 1, cap: 1.0 };
         let write = |block: &Block| Ok(writer.append_companion(&block.rows)?);
         let mut progress = Shown::new("companion", self.companion_count(), options.quiet);
-        let sampler = self.sampler(program, &sparsifier, crate::program::MAX_SLOTS, false);
-        with_probe(program.slots(), single, Sample {
+        let sampler = self.sampler(program, &sparsifier, MAX_SLOTS, false, Drawing::Companion);
+        with_probe(program, single, Sample {
             sampler: &sampler,
             family: Family::Companion,
             range: self.companion.clone(),
@@ -209,8 +210,10 @@ impl<'a> Plan<'a> {
         sparsifier: &'p Sparsifier,
         room: usize,
         keep_events: bool,
+        drawing: Drawing,
     ) -> Sampler<'p> {
-        Sampler::new(program, sparsifier, self.recorded.clone(), self.seed, room, keep_events)
+        let recorded = self.recorded.clone();
+        Sampler::new(program, sparsifier, recorded, self.seed, room, keep_events, drawing)
     }
 
     fn draw_shots(
@@ -219,12 +222,12 @@ impl<'a> Plan<'a> {
         options: &Run,
         writer: &mut Writer,
     ) -> Result<Finished, CommandError> {
-        let sparsifier = Sparsifier::new(program.sites(), self.choice.terms.unwrap_or(1));
+        let sparsifier = Sparsifier::new(program.sites());
         let mut clipped = 0;
         let write = |block: &Block| -> Result<(), CommandError> {
             clipped += block.audit.iter().filter(|shot| shot.register.clipped).count() as u64;
             writer.append_shots(&block.rows)?;
-            writer.append_audit(&block.audit)?;
+            writer.append_audit(&AuditBlock::new(&block.audit))?;
             if options.faults {
                 writer.append_faults(&block.faults)?;
             }
@@ -234,9 +237,13 @@ impl<'a> Plan<'a> {
         let mut progress = Shown::new("shots", total, options.quiet);
         let room = match self.choice.readout {
             Readout::Dense => dense::MAX_ACTIVE,
-            Readout::Probe => crate::program::MAX_SLOTS,
+            Readout::Probe => MAX_SLOTS,
         };
-        let sampler = self.sampler(program, &sparsifier, room, options.faults);
+        let drawing = match self.choice.terms {
+            None => Drawing::Members,
+            Some(terms) => Drawing::Terms(terms as usize),
+        };
+        let sampler = self.sampler(program, &sparsifier, room, options.faults, drawing);
         let sample = Sample {
             sampler: &sampler,
             family: Family::Shots,
@@ -246,8 +253,8 @@ impl<'a> Plan<'a> {
         };
         let active = program.first().peak_active;
         let done = match self.choice.probe {
-            None => sample.with(|| Dense::new(active))?,
-            Some(settings) => with_probe(program.slots(), settings, sample)?,
+            None => sample.with(|| Dense::new(program.sites(), active))?,
+            Some(settings) => with_probe(program, settings, sample)?,
         };
         progress.finish();
         self.finished.set(done);
@@ -283,19 +290,20 @@ impl<S: FnMut(&Block) -> Result<(), CommandError>> Sample<'_, '_, S> {
 
 /// Runs with terms of the smallest width that holds the slots.
 fn with_probe<S: FnMut(&Block) -> Result<(), CommandError>>(
-    slots: usize,
+    program: &Program,
     settings: Settings,
     sample: Sample<'_, '_, S>,
 ) -> Result<u64, CommandError> {
+    let (sites, slots) = (program.sites(), program.slots());
     match slots {
-        0..=64 => sample.with(|| Probe::<1>::new(slots, settings)),
-        65..=128 => sample.with(|| Probe::<2>::new(slots, settings)),
-        _ => sample.with(|| Probe::<4>::new(slots, settings)),
+        0..=64 => sample.with(|| Probe::<1>::new(sites, slots, settings)),
+        65..=128 => sample.with(|| Probe::<2>::new(sites, slots, settings)),
+        _ => sample.with(|| Probe::<4>::new(sites, slots, settings)),
     }
 }
 
 fn site_rows(input: &Input) -> Vec<SiteRow> {
-    let row = |(site, kept): (&magic::Site, bool)| SiteRow {
+    let row = |(site, kept): (&Site, bool)| SiteRow {
         line: line(input, site.operation),
         qubits: names(input, &site.qubits),
         kind: match site.kind {
@@ -317,7 +325,7 @@ fn site_rows(input: &Input) -> Vec<SiteRow> {
 }
 
 fn location_rows(input: &Input) -> Vec<LocationRow> {
-    let row = |location: &crate::program::Location| LocationRow {
+    let row = |location: &Location| LocationRow {
         line: line(input, location.operation),
         kind: location.kind.word().to_owned(),
         qubits: names(input, &location.qubits),
@@ -369,3 +377,4 @@ fn available_memory() -> u64 {
     });
     said.map_or(u64::MAX, |kibibytes| kibibytes * 1024 / 10 * 9)
 }
+

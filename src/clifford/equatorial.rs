@@ -32,6 +32,7 @@ use num_complex::Complex64;
 use rand::Rng;
 
 use super::terms::bits::Bits;
+use super::terms::matrix::Matrix;
 use super::terms::phase::Diagonal;
 use super::terms::term::Head;
 use super::terms::{Mask, Terms};
@@ -41,9 +42,9 @@ use super::terms::{Mask, Terms};
 pub struct EquatorialForm<const W: usize> {
     active: Bits<W>,
     diagonal: Diagonal<W>,
-    /// Row q: bits q' with A_qq' odd; symmetric, no diagonal. Only rows of
-    /// active slots are read.
-    rows: Vec<Bits<W>>,
+    /// Â: row q has the bits q' with A_qq' odd, and bit q if a_q is. Only rows
+    /// of active slots are read.
+    rows: Matrix<Vec<u64>, W>,
 }
 
 impl<const W: usize> EquatorialForm<W> {
@@ -60,7 +61,7 @@ impl<const W: usize> EquatorialForm<W> {
         Self {
             active: Bits::ZERO,
             diagonal: Diagonal::ZERO,
-            rows: vec![Bits::ZERO; slots],
+            rows: Matrix::zero(slots),
         }
     }
 
@@ -87,11 +88,10 @@ impl<const W: usize> EquatorialForm<W> {
         let mut below = Bits::ZERO;
         for q in self.active.ones() {
             let row = words(below);
-            self.rows[q] = row;
-            for other in below.ones() {
-                self.rows[other] |= Bits::one(q).when(row.has(other));
-            }
-            below |= Bits::one(q);
+            let here = Bits::one(q);
+            self.rows.set_row(q, row | (here & self.diagonal.low));
+            self.rows.add((row, here), (Bits::ZERO, Bits::ZERO));
+            below |= here;
         }
     }
 
@@ -108,16 +108,21 @@ impl<const W: usize> EquatorialForm<W> {
     /// Âx and A(x) mod 4, for x on active slots.
     #[inline(always)]
     fn image(&self, x: Bits<W>) -> (Bits<W>, u8) {
-        let mut sum = Bits::ZERO;
+        let (image, pairs) = self.rows.combine(x);
+        (image, self.diagonal.total(x) ^ (u8::from(pairs) << 1))
+    }
+
+    /// The same for e_p ⊕ x, bit by bit: for an x of few bits.
+    #[inline(always)]
+    fn image_of_few(&self, p: usize, x: Bits<W>) -> (Bits<W>, u8) {
+        let mut image = self.rows.row(p);
         let mut pairs = false;
         for q in x.ones() {
-            pairs ^= sum.has(q);
-            sum ^= self.rows[q];
+            pairs ^= image.has(q);
+            image ^= self.rows.row(q);
         }
-        (
-            sum ^ (x & self.diagonal.low),
-            self.diagonal.total(x) ^ (u8::from(pairs) << 1),
-        )
+        let quarters = self.diagonal.total(x | Bits::one(p));
+        (image, quarters ^ (u8::from(pairs) << 1))
     }
 }
 
@@ -137,7 +142,7 @@ impl<const W: usize> Terms<W> {
         let mut scratch = Scratch::new(self.slots());
         let mut sums = [Complex64::ZERO; 2];
         for (head, rows) in self.views() {
-            let values = scratch.overlap(form, head, rows, slot);
+            let values = scratch.overlap(form, head, &rows, slot);
             sums[0] += values[0];
             sums[1] += values[1];
         }
@@ -148,7 +153,7 @@ impl<const W: usize> Terms<W> {
 /// Working space of one overlap: a Z₄-valued form in two lanes.
 struct Scratch<const W: usize> {
     /// Pairs of parameters.
-    rows: Vec<Bits<W>>,
+    rows: Matrix<Vec<u64>, W>,
     /// For a plain slot n: the parameters p with n in K_p.
     columns: Vec<Bits<W>>,
     /// Parameters not summed over yet.
@@ -174,7 +179,7 @@ impl<const W: usize> Scratch<W> {
             zero: false,
         };
         Self {
-            rows: vec![Bits::ZERO; slots],
+            rows: Matrix::zero(slots),
             columns: vec![Bits::ZERO; slots],
             left: Bits::ZERO,
             lanes: [lane; 2],
@@ -187,7 +192,7 @@ impl<const W: usize> Scratch<W> {
         &mut self,
         form: &EquatorialForm<W>,
         head: &Head<W>,
-        rows: &[Bits<W>],
+        rows: &Matrix<&[u64], W>,
         slot: usize,
     ) -> [Complex64; 2] {
         debug_assert!(((head.pivots | head.shift) & !form.active).is_zero());
@@ -209,26 +214,22 @@ impl<const W: usize> Scratch<W> {
 
     /// Sets up B(y) − A(h ⊕ Ky), the same in both lanes.
     #[inline(always)]
-    fn pull_back(&mut self, form: &EquatorialForm<W>, head: &Head<W>, rows: &[Bits<W>]) {
+    fn pull_back(&mut self, form: &EquatorialForm<W>, head: &Head<W>, rows: &Matrix<&[u64], W>) {
         let pivots = head.pivots;
         let plain = form.active & !pivots;
         for n in plain.ones() {
-            self.columns[n] = Bits::ZERO;
-        }
-        for p in pivots.ones() {
-            for n in (rows[p] & plain).ones() {
-                self.columns[n] |= Bits::one(p);
-            }
+            self.columns[n] = rows.column(pivots, n);
         }
         let mut diagonal = head.diagonal;
         for p in pivots.ones() {
             let here = Bits::one(p);
-            let (image, value) = form.image((rows[p] & plain) | here);
-            let mut pairs = (rows[p] ^ image) & pivots;
+            let row = rows.row(p);
+            let (image, value) = form.image_of_few(p, row & plain);
+            let mut pairs = (row ^ image) & pivots;
             for n in (image & plain).ones() {
                 pairs ^= self.columns[n];
             }
-            self.rows[p] = pairs & !here;
+            self.rows.set_row(p, pairs);
             let sign = (image & head.shift).parity();
             diagonal.add((8 - value - 2 * u8::from(sign)) & 3, here);
         }
@@ -246,7 +247,7 @@ impl<const W: usize> Scratch<W> {
     /// Keeps the points with λ·y = σ, σ by lane.
     #[inline(always)]
     fn restrict(&mut self, lambda: Bits<W>, sigma: [bool; 2]) {
-        let Some(variable) = lambda.lowest() else {
+        let Some(variable) = lambda.highest() else {
             for (lane, sigma) in self.lanes.iter_mut().zip(sigma) {
                 lane.zero |= sigma;
             }
@@ -255,17 +256,11 @@ impl<const W: usize> Scratch<W> {
         let others = !Bits::one(variable);
         self.left &= others;
         let k = lambda & others;
-        let m = self.rows[variable] & self.left;
+        let m = self.rows.row(variable) & self.left;
         let odd = self.lanes[0].diagonal.low.has(variable);
-        // Bits of variables already summed over, and on the diagonal, are
-        // never read: rows need not be kept clean.
-        let on_form = m ^ k.when(odd);
-        for p in k.ones() {
-            self.rows[p] ^= on_form;
-        }
-        for p in m.ones() {
-            self.rows[p] ^= k;
-        }
+        // Bits of variables already summed over are never read: no need to
+        // take them out of the rows.
+        self.rows.add((k, m ^ k.when(odd)), (m, k));
         for (lane, sigma) in self.lanes.iter_mut().zip(sigma) {
             let b = lane.diagonal.take(variable);
             lane.diagonal.substitute(b, sigma, k, m);
@@ -278,9 +273,10 @@ impl<const W: usize> Scratch<W> {
     /// Sums over everything that is left.
     #[inline(always)]
     fn sum(&mut self) {
-        while let Some(variable) = self.left.lowest() {
+        // From the highest on, so that the rows to be changed become fewer.
+        while let Some(variable) = self.left.highest() {
             self.left &= !Bits::one(variable);
-            let m = self.rows[variable] & self.left;
+            let m = self.rows.row(variable) & self.left;
             if self.lanes[0].diagonal.low.has(variable) {
                 self.halves += 1;
                 for lane in &mut self.lanes {
@@ -288,9 +284,7 @@ impl<const W: usize> Scratch<W> {
                     lane.eighths = lane.eighths.wrapping_add(if b == 1 { 1 } else { 7 });
                     lane.diagonal.add(4 - b, m);
                 }
-                for p in m.ones() {
-                    self.rows[p] ^= m;
-                }
+                self.rows.add((m, m), (Bits::ZERO, Bits::ZERO));
             } else {
                 self.halves += 2;
                 let sigma = [0, 1].map(|i| self.lanes[i].diagonal.high.has(variable));

@@ -1,6 +1,6 @@
 //! Magic: the non-Clifford places ("sites") of a noisy circuit.
 //!
-//! [`schedule`] folds angles to (0, π/2), merges noise into sites, collects
+//! [`schedule()`] folds angles to (0, π/2), merges noise into sites, collects
 //! fresh qubits into prepared sites, and gives every site its equal-extent
 //! ensemble with each member split into stabiliser components. Theory: PRX
 //! Quantum 2, 010345 (2021); Quantum 3, 181 (2019).
@@ -14,6 +14,7 @@ pub mod extent;
 pub mod mixing;
 mod prepared;
 mod rotation;
+mod schedule;
 pub mod site;
 pub mod sparsify;
 mod splitting;
@@ -24,6 +25,7 @@ use crate::circuit::{BitExpression, Clifford, PauliProduct};
 use crate::noise::{PauliChannel, ReadoutFlip};
 
 pub use ccz::CczComponent;
+pub use schedule::{ScheduleOptions, schedule};
 pub use site::{
     CczSite, PreparedMember, PreparedSite, RotationMember, RotationSite, Site, SiteKind, Stabiliser,
 };

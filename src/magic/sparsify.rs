@@ -43,6 +43,11 @@ impl Draw {
         Draw::default()
     }
 
+    /// The member drawn for a site.
+    pub fn member(&self, site: u32) -> usize {
+        usize::from(self.members[site as usize])
+    }
+
     /// The component of `site` in every term.
     pub fn row(&self, site: usize) -> &[u8] {
         &self.components[site * self.terms..(site + 1) * self.terms]

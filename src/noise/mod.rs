@@ -1,6 +1,6 @@
 //! Noise: channels, the noise file, and their places in the circuit.
 //!
-//! [`attach`] takes the circuit's calls apart into elementary gates and puts
+//! [`attach()`] takes the circuit's calls apart into elementary gates and puts
 //! every annotated channel and every matching rule of the noise file where it
 //! acts. What comes out is a plain list of [`Instruction`]s: Clifford gates,
 //! rotations by any angle, CCZ, measurements, resets, classical assignments,
@@ -9,9 +9,21 @@
 //!
 //! This module knows the circuit, and nothing of sites or simulation.
 
+mod attach;
+mod channels;
+mod file;
+mod place;
+mod rules;
+mod suggest;
+#[cfg(test)]
+mod tests;
+
 use std::sync::Arc;
 
 use crate::circuit::{BitExpression, Clifford, PauliProduct, Qubits};
+
+pub use attach::attach;
+pub use file::NoiseFile;
 
 /// A circuit with its noise in place.
 #[derive(Debug, Clone)]
@@ -86,6 +98,17 @@ pub struct ReadoutFlip {
     pub zero_to_one: f64,
     /// Probability of recording 0 when the state gave 1.
     pub one_to_zero: f64,
+}
+
+impl ReadoutFlip {
+    /// This flip followed by another of the bit it leaves.
+    pub fn then(self, next: ReadoutFlip) -> ReadoutFlip {
+        let compose = |one: f64, back: f64, forth: f64| one * (1.0 - back) + (1.0 - one) * forth;
+        ReadoutFlip {
+            zero_to_one: compose(self.zero_to_one, next.one_to_zero, next.zero_to_one),
+            one_to_zero: compose(self.one_to_zero, next.zero_to_one, next.one_to_zero),
+        }
+    }
 }
 
 /// A random Pauli on the qubits of one call.

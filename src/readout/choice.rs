@@ -1,6 +1,6 @@
 //! Which read-out a run takes, with which settings.
 
-use crate::magic;
+use crate::magic::mixing::{mixing_weight, terms_for_average, terms_for_delta};
 use crate::program::{Program, Step};
 
 use super::{dense, probe};
@@ -201,8 +201,8 @@ fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choic
     let half = wish.delta / 2.0;
     let terms = match wish.terms {
         Terms::Fixed(terms) => Some(terms),
-        Terms::Average => magic::terms_for_average(log_extent),
-        Terms::FromDelta => magic::terms_for_delta(log_extent, half),
+        Terms::Average => terms_for_average(log_extent),
+        Terms::FromDelta => terms_for_delta(log_extent, half),
     };
     let too_many = ChoiceError::TooManyTerms {
         log10_extent: log_extent / std::f64::consts::LN_10,
@@ -215,7 +215,7 @@ fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choic
         let fitting =
             u128::from(wish.memory) / (term_memory(slots) * wish.threads as u128).max(1);
         let fitting = (fitting as u64).max(1);
-        let delta = 4.0 * magic::mixing_weight(log_extent, fitting);
+        let delta = 4.0 * mixing_weight(log_extent, fitting);
         let advice = if delta < 2.0 {
             format!("--delta {:.2e} (or --terms {fitting}) would fit", delta * 1.01)
         } else {
@@ -232,7 +232,7 @@ fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choic
     Ok(Choice {
         readout: Readout::Probe,
         terms: Some(terms),
-        mixing_weight: magic::mixing_weight(log_extent, terms),
+        mixing_weight: mixing_weight(log_extent, terms),
         probe: Some(probe::Settings {
             probes,
             cap: probe::acceptance_cap(log_extent, terms, probes),

@@ -7,7 +7,7 @@
 use num_complex::Complex64;
 use rand::RngExt;
 
-use crate::magic::{Draw, Member};
+use crate::magic::{Draw, Site, SiteKind};
 use crate::program::{MAX_SLOTS, Primitive};
 
 use super::{Diagnostics, Register, ShotRng};
@@ -23,7 +23,8 @@ pub fn memory(active: usize) -> u128 {
 /// Amplitudes of the active slots. Bit p of an index belongs to slot
 /// `order[p]`.
 #[derive(Debug)]
-pub struct Dense {
+pub struct Dense<'p> {
+    sites: &'p [Site],
     amplitudes: Vec<Complex64>,
     order: Vec<u16>,
     position: [u8; MAX_SLOTS],
@@ -36,13 +37,13 @@ const I_POWERS: [Complex64; 4] = [
     Complex64::new(0.0, -1.0),
 ];
 
-impl Dense {
-    /// A register with room for `active` qubits.
-    pub fn new(active: usize) -> Self {
+impl<'p> Dense<'p> {
+    /// A register for these sites, with room for `active` qubits.
+    pub fn new(sites: &'p [Site], active: usize) -> Self {
         debug_assert!(active <= MAX_ACTIVE);
         let mut amplitudes = Vec::with_capacity(1 << active);
         amplitudes.push(Complex64::ONE);
-        Dense { amplitudes, order: Vec::with_capacity(active), position: [0; MAX_SLOTS] }
+        Dense { sites, amplitudes, order: Vec::with_capacity(active), position: [0; MAX_SLOTS] }
     }
 
     /// The amplitudes; bit p of an index belongs to slot `slots()[p]`.
@@ -134,7 +135,7 @@ impl Dense {
     }
 }
 
-impl Register for Dense {
+impl Register for Dense<'_> {
     fn start(&mut self, _draw: &Draw) {
         self.amplitudes.clear();
         self.amplitudes.push(Complex64::ONE);
@@ -147,8 +148,8 @@ impl Register for Dense {
     }
 
     fn prepare(&mut self, slot: u16, site: u32, draw: &Draw) {
-        let Member::Prepared(member) = draw.member(site) else { return };
-        let [zero, one] = member.state;
+        let SiteKind::Prepared(prepared) = &self.sites[site as usize].kind else { return };
+        let [zero, one] = prepared.members[draw.member(site)].state;
         self.join(slot, zero, one);
     }
 
@@ -186,8 +187,9 @@ impl Register for Dense {
     }
 
     fn rotate(&mut self, slot: u16, site: u32, flipped: bool, draw: &Draw) {
-        let Member::Rotation(member) = draw.member(site) else { return };
-        self.phase(slot, flipped, Complex64::cis(member.angle));
+        let SiteKind::Rotation(rotation) = &self.sites[site as usize].kind else { return };
+        let angle = rotation.members[draw.member(site)].angle;
+        self.phase(slot, flipped, Complex64::cis(angle));
     }
 
     fn quarter_turn(&mut self, slot: u16, flipped: bool) {

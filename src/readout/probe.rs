@@ -20,8 +20,10 @@
 use num_complex::Complex64;
 use rand::RngExt;
 
-use crate::clifford::terms::{EquatorialForm, QuadraticPhase, Terms};
-use crate::magic::{self, CczSite, Draw, Member};
+use crate::clifford::equatorial::EquatorialForm;
+use crate::clifford::terms::{QuadraticPhase, Terms};
+use crate::magic::mixing::{mean_norm, mixing_weight};
+use crate::magic::{CczSite, Draw, Site, SiteKind};
 use crate::program::Primitive;
 
 use super::{Diagnostics, Register, ShotRng};
@@ -47,8 +49,12 @@ pub fn probes_for(measurements: usize, delta: f64) -> usize {
 /// Wilson–Hilferty approximation of the gamma law (Proc. Natl. Acad. Sci. USA
 /// 17, 684 (1931), from memory).
 pub fn acceptance_cap(log_extent: f64, terms: u64, probes: usize) -> f64 {
-    let mean = magic::mean_norm(log_extent, terms);
-    let mixing = magic::mixing_weight(log_extent, terms);
+    if terms == 1 {
+        // One term has ‖Ω‖² = ξ, exactly.
+        return log_extent.exp();
+    }
+    let mean = mean_norm(log_extent, terms);
+    let mixing = mixing_weight(log_extent, terms);
     let spread = if mixing < 1.0 {
         let root = 1.0 + 3.8 * (mixing / (1.0 - mixing)).sqrt();
         root * root * (1.0 - mixing)
@@ -71,7 +77,8 @@ pub struct Settings {
 }
 
 /// Terms on up to 64·W slots.
-pub struct Probe<const W: usize> {
+pub struct Probe<'p, const W: usize> {
+    sites: &'p [Site],
     terms: Terms<W>,
     form: EquatorialForm<W>,
     settings: Settings,
@@ -80,12 +87,13 @@ pub struct Probe<const W: usize> {
     diagnostics: Diagnostics,
 }
 
-impl<const W: usize> Probe<W> {
-    /// A register of `slots` slots.
-    pub fn new(slots: usize, settings: Settings) -> Self {
+impl<'p, const W: usize> Probe<'p, W> {
+    /// A register of `slots` slots for these sites.
+    pub fn new(sites: &'p [Site], slots: usize, settings: Settings) -> Self {
         Probe {
+            sites,
             terms: Terms::new(slots),
-            form: EquatorialForm::new(),
+            form: EquatorialForm::new(slots),
             settings,
             active: [0; W],
             accepted: false,
@@ -145,29 +153,34 @@ fn wide<const W: usize>(mask: &[u64; 4]) -> [u64; W] {
     std::array::from_fn(|word| mask[word])
 }
 
+/// Pairs of the three qubits of a CCZ, in the order of a component's bits.
+const PAIRS: [[usize; 2]; 3] = [[0, 1], [1, 2], [0, 2]];
+
 /// D_b of a CCZ on x ⊕ flipped, as Z and CZ gates and a sign.
 ///
 /// A factor (−1)^(x_i⊕f_i) is (−1)^f_i·(−1)^x_i, and (x_i⊕f_i)(x_j⊕f_j) =
 /// x_i·x_j ⊕ f_j·x_i ⊕ f_i·x_j ⊕ f_i·f_j.
 fn flipped_component(b: u8, flipped: [bool; 3]) -> QuadraticPhase {
     let component = CczSite::component(b);
-    let mut phase =
-        QuadraticPhase { z: component.z, cz: component.cz, negative: component.negative };
-    for (slot, flip) in flipped.into_iter().enumerate() {
-        phase.negative ^= flip && component.z >> slot & 1 == 1;
+    let mut phase = QuadraticPhase {
+        z: [0, 1, 2].map(|qubit| component.z >> qubit & 1 == 1),
+        cz: [0, 1, 2].map(|pair| component.cz >> pair & 1 == 1),
+        negative: component.negative,
+    };
+    for (z, flip) in phase.z.into_iter().zip(flipped) {
+        phase.negative ^= z && flip;
     }
-    for (pair, [i, j]) in CczSite::PAIRS.into_iter().enumerate() {
-        if component.cz >> pair & 1 == 1 {
-            phase.z ^= u8::from(flipped[j]) << i | u8::from(flipped[i]) << j;
-            phase.negative ^= flipped[i] && flipped[j];
-        }
+    for ([i, j], cz) in PAIRS.into_iter().zip(phase.cz) {
+        phase.z[i] ^= cz && flipped[j];
+        phase.z[j] ^= cz && flipped[i];
+        phase.negative ^= cz && flipped[i] && flipped[j];
     }
     phase
 }
 
-impl<const W: usize> Register for Probe<W> {
+impl<const W: usize> Register for Probe<'_, W> {
     fn start(&mut self, draw: &Draw) {
-        self.terms.reset(draw.weights());
+        self.terms.reset(&draw.weights);
         self.active = [0; W];
         self.accepted = false;
         self.diagnostics = Diagnostics::default();
@@ -179,9 +192,10 @@ impl<const W: usize> Register for Probe<W> {
     }
 
     fn prepare(&mut self, slot: u16, site: u32, draw: &Draw) {
-        let Member::Prepared(member) = draw.member(site) else { return };
+        let SiteKind::Prepared(prepared) = &self.sites[site as usize].kind else { return };
         self.set_active(slot);
-        let components = draw.components(site);
+        let member = &prepared.members[draw.member(site)];
+        let components = draw.row(site as usize);
         self.terms.prepare(usize::from(slot), |label| {
             member.components[usize::from(components[label as usize])].0
         });
@@ -196,7 +210,7 @@ impl<const W: usize> Register for Probe<W> {
     }
 
     fn rotate(&mut self, slot: u16, site: u32, flipped: bool, draw: &Draw) {
-        let components = draw.components(site);
+        let components = draw.row(site as usize);
         if !flipped {
             self.terms.diagonal(usize::from(slot), |label| components[label as usize]);
             return;
@@ -219,7 +233,7 @@ impl<const W: usize> Register for Probe<W> {
     }
 
     fn ccz(&mut self, slots: [u16; 3], flipped: [bool; 3], site: u32, draw: &Draw) {
-        let components = draw.components(site);
+        let components = draw.row(site as usize);
         let table: [QuadraticPhase; 8] =
             std::array::from_fn(|b| flipped_component(b as u8, flipped));
         self.terms.quadratic(slots.map(usize::from), |label| {
@@ -228,7 +242,9 @@ impl<const W: usize> Register for Probe<W> {
     }
 
     fn controlled_z(&mut self, a: u16, b: u16) {
-        self.terms.controlled_z(usize::from(a), usize::from(b));
+        let (a, b) = (usize::from(a), usize::from(b));
+        let phase = QuadraticPhase { z: [false; 3], cz: [true, false, false], negative: false };
+        self.terms.quadratic([a, b, b], |_| phase);
     }
 
     fn z(&mut self, slot: u16) {

@@ -32,15 +32,34 @@ pub struct Block {
     pub faults: Vec<FaultEvent>,
 }
 
-/// Recorded bits, one row a shot; bit i of a row is recorded bit i.
+/// Recorded bits of some shots. Bit i of a row is recorded bit i, the registers
+/// standing one after another; bit i of a word is 2^i.
 #[derive(Debug, Clone, Default, PartialEq, Eq)]
 pub struct Rows {
-    /// Number of rows.
+    /// Number of shots (rows).
     pub shots: usize,
-    /// 64-bit words a row.
+    /// Words a row takes: ⌈bits/64⌉.
     pub words: usize,
-    /// The rows, one after another.
+    /// The rows one after another, `shots`·`words` words.
     pub bits: Vec<u64>,
+}
+
+impl Rows {
+    /// Zeros for `shots` rows of `bits` bits.
+    pub fn zeros(shots: usize, bits: usize) -> Self {
+        let words = bits.div_ceil(64);
+        Rows { shots, words, bits: vec![0; shots * words] }
+    }
+
+    /// Bit `bit` of row `shot`.
+    pub fn get(&self, shot: usize, bit: usize) -> bool {
+        self.bits[shot * self.words + bit / 64] >> (bit % 64) & 1 == 1
+    }
+
+    /// Sets bit `bit` of row `shot` to 1.
+    pub fn set(&mut self, shot: usize, bit: usize) {
+        self.bits[shot * self.words + bit / 64] |= 1 << (bit % 64);
+    }
 }
 
 /// Draws shots of a program.
@@ -51,6 +70,18 @@ pub struct Sampler<'p> {
     seed: u64,
     room: usize,
     keep_events: bool,
+    drawing: Drawing,
+}
+
+/// What is drawn of the sites for a shot.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Drawing {
+    /// Members only, for exact registers.
+    Members,
+    /// Members and so many terms.
+    Terms(usize),
+    /// One term of weight 1.
+    Companion,
 }
 
 /// What one thread needs for a shot.
@@ -70,8 +101,9 @@ impl<'p> Sampler<'p> {
         seed: u64,
         room: usize,
         keep_events: bool,
+        drawing: Drawing,
     ) -> Self {
-        Sampler { program, sparsifier, recorded, seed, room, keep_events }
+        Sampler { program, sparsifier, recorded, seed, room, keep_events, drawing }
     }
 
     /// 64-bit words a shot in a block.
@@ -112,7 +144,9 @@ impl<'p> Sampler<'p> {
                     let taken = lock(&pool).pop();
                     let mut worker = taken.unwrap_or_else(|| self.worker(make()));
                     let shots = size.min(range.end - first);
-                    let block = self.block(family, first, shots, &mut worker, interrupt);
+                    let asked = first..first + shots;
+                    let block =
+                        self.block(family, asked, range.start, &mut worker, interrupt);
                     lock(&pool).push(worker);
                     block
                 })
@@ -144,23 +178,24 @@ impl<'p> Sampler<'p> {
         }
     }
 
-    /// Draws up to `shots` shots, fewer if interrupted.
+    /// Draws the shots asked for, fewer if interrupted; events count shots from
+    /// `start`.
     fn block<R: Register>(
         &self,
         family: Family,
-        first: u64,
-        shots: u64,
+        asked: std::ops::Range<u64>,
+        start: u64,
         worker: &mut Worker<'p, R>,
         interrupt: &Interrupt,
     ) -> Result<Block, SampleError> {
         let rows = Rows { words: self.words(), ..Rows::default() };
-        let mut block = Block { first, rows, ..Block::default() };
-        for index in first..first + shots {
+        let mut block = Block { first: asked.start, rows, ..Block::default() };
+        for index in asked {
             if interrupt.raised() {
                 break;
             }
             if let Some(audit) = self.shot(family, index, worker, interrupt)? {
-                self.record(index, audit, &worker.machine, &mut block);
+                self.record(index - start, audit, &worker.machine, &mut block);
             } else {
                 break;
             }
@@ -179,9 +214,13 @@ impl<'p> Sampler<'p> {
         let mut rng = random::generator(self.seed, family, index);
         let Worker { machine, register, draw } = worker;
         for attempts in 1..=MAX_ATTEMPTS {
-            match family {
-                Family::Shots => self.sparsifier.draw(draw, &mut rng),
-                Family::Companion => self.sparsifier.draw_companion(draw, &mut rng),
+            match self.drawing {
+                Drawing::Members => self.sparsifier.draw_members(&mut rng, draw),
+                Drawing::Terms(terms) => {
+                    self.sparsifier.draw_members(&mut rng, draw);
+                    self.sparsifier.draw_terms(terms, &mut rng, draw);
+                }
+                Drawing::Companion => self.sparsifier.draw_companion(&mut rng, draw),
             }
             if machine.attempt(register, draw, &mut rng)? {
                 return Ok(Some(ShotAudit {
@@ -198,7 +237,7 @@ impl<'p> Sampler<'p> {
     }
 
     /// Appends a finished shot to a block.
-    fn record(&self, index: u64, audit: ShotAudit, machine: &Machine<'_>, block: &mut Block) {
+    fn record(&self, shot: u64, audit: ShotAudit, machine: &Machine<'_>, block: &mut Block) {
         let Rows { shots, words, bits } = &mut block.rows;
         let start = bits.len();
         bits.resize(start + *words, 0);
@@ -211,7 +250,7 @@ impl<'p> Sampler<'p> {
             machine
                 .events()
                 .iter()
-                .map(|&(location, pauli)| FaultEvent { shot: index, location, pauli }),
+                .map(|&(location, pauli)| FaultEvent { shot, location, pauli }),
         );
         block.audit.push(audit);
         *shots += 1;

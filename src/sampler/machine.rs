@@ -14,12 +14,12 @@ use super::SampleError;
 /// A noise event that fired.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub struct FaultEvent {
-    /// Index of the shot.
+    /// Index of the shot, counted from the first one of the call.
     pub shot: u64,
-    /// Index of the location.
+    /// Index into the program's locations.
     pub location: u32,
-    /// Letters of the location's qubits in base 4, qubit 0 least significant:
-    /// 0 I, 1 X, 2 Y, 3 Z. A flipped record and a decay are 1.
+    /// The Pauli, see [`pauli_code`]; 0 where the event is not a Pauli (the kind
+    /// of the location then says what happened).
     pub pauli: u64,
 }
 
@@ -47,18 +47,15 @@ pub struct Machine<'p> {
     events: Vec<(u32, u64)>,
 }
 
-fn base_four(word: PauliWord) -> u64 {
-    let mut code = 0;
-    for qubit in (0..32).rev() {
-        let letter = match (word.x >> qubit & 1, word.z >> qubit & 1) {
-            (0, 0) => 0,
-            (1, 0) => 1,
-            (1, _) => 2,
-            _ => 3,
-        };
-        code = code << 2 | letter;
-    }
-    code
+/// A Pauli word as one number: digit i in base 4 is the letter on qubit i of
+/// the location, 0 I, 1 X, 2 Y, 3 Z.
+pub fn pauli_code(word: PauliWord) -> u64 {
+    (0..32).fold(0, |code, qubit| {
+        let x = u64::from(word.x >> qubit & 1);
+        let z = u64::from(word.z >> qubit & 1);
+        // X is 1, Y is 2, Z is 3.
+        code | ((x ^ z) | z << 1) << (2 * qubit)
+    })
 }
 
 impl<'p> Machine<'p> {
@@ -210,7 +207,7 @@ impl<'p> Machine<'p> {
                 self.toggle(segment, sets[1]);
             }
         }
-        self.event(place.location, base_four(word));
+        self.event(place.location, pauli_code(word));
     }
 
     fn event(&mut self, location: u32, pauli: u64) {
@@ -226,7 +223,7 @@ impl<'p> Machine<'p> {
             if value { outcome.flip.one_to_zero } else { outcome.flip.zero_to_one };
         let flipped = chance > 0.0 && rng.random::<f64>() < chance;
         if let (true, Some(location)) = (flipped, outcome.location) {
-            self.event(location, 1);
+            self.event(location, 0);
         }
         self.set_bit(bit, value ^ flipped);
     }
@@ -354,7 +351,7 @@ impl<'p> Machine<'p> {
 
     fn decay(&mut self, segment: &Segment, flips: SetId, location: u32) {
         self.toggle(segment, flips);
-        self.event(location, 1);
+        self.event(location, 0);
     }
 }
 
@@ -383,5 +380,22 @@ fn quadratic<R: Register>(
         && none ^ first ^ second ^ both
     {
         register.controlled_z(a, b);
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn pauli_letters_have_their_digits() {
+        let word = |x, z| PauliWord { x, z };
+        assert_eq!(pauli_code(word(0, 0)), 0);
+        assert_eq!(pauli_code(word(1, 0)), 1, "X on qubit 0");
+        assert_eq!(pauli_code(word(1, 1)), 2, "Y on qubit 0");
+        assert_eq!(pauli_code(word(0, 1)), 3, "Z on qubit 0");
+        // I X Y Z on qubits 0 to 3: 0 + 1·4 + 2·16 + 3·64.
+        assert_eq!(pauli_code(word(0b0110, 0b1100)), 228);
+        assert_eq!(pauli_code(word(0, 1 << 31)), 3 << 62);
     }
 }

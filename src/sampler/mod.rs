@@ -10,11 +10,13 @@
 pub mod batch;
 pub mod machine;
 pub mod random;
+#[cfg(test)]
+mod tests;
 
 use std::sync::atomic::{AtomicBool, Ordering};
 
-pub use batch::{Block, Rows, Sampler};
-pub use machine::{FaultEvent, ShotAudit};
+pub use batch::{Block, Drawing, Rows, Sampler};
+pub use machine::{FaultEvent, ShotAudit, pauli_code};
 pub use random::Family;
 
 /// Why shots could not be drawn.

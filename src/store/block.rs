@@ -1,45 +1,10 @@
 //! Rows of bits, packed as the sampler makes them and unpacked as HDF5 wants
 //! them.
 
-use crate::noise::PauliWord;
-
-/// The recorded bits of some shots. Bit i of a row is recorded bit i, the
-/// registers standing in header order one after another; bit i of a word is
-/// 2^i.
-#[derive(Debug, Clone, PartialEq, Eq, Default)]
-pub struct Block {
-    /// Number of shots (rows).
-    pub shots: usize,
-    /// Words a row takes: ⌈bits/64⌉.
-    pub words: usize,
-    /// The rows one after another, `shots`·`words` words.
-    pub bits: Vec<u64>,
-}
-
-impl Block {
-    /// A block of zeros for `shots` rows of `bits` bits.
-    pub fn zeros(shots: usize, bits: usize) -> Self {
-        let words = bits.div_ceil(64);
-        Block {
-            shots,
-            words,
-            bits: vec![0; shots * words],
-        }
-    }
-
-    /// Bit `bit` of row `shot`.
-    pub fn get(&self, shot: usize, bit: usize) -> bool {
-        self.bits[shot * self.words + bit / 64] >> (bit % 64) & 1 == 1
-    }
-
-    /// Sets bit `bit` of row `shot` to 1.
-    pub fn set(&mut self, shot: usize, bit: usize) {
-        self.bits[shot * self.words + bit / 64] |= 1 << (bit % 64);
-    }
-}
+use crate::sampler::{Rows, ShotAudit};
 
 /// Diagnostics of some shots, one value a shot in each list.
-#[derive(Debug, Clone, PartialEq, Eq, Default)]
+#[derive(Debug, Clone, PartialEq, Default)]
 pub struct AuditBlock {
     /// Draws it took until the shot was accepted, at least 1.
     pub attempts: Vec<u32>,
@@ -47,29 +12,20 @@ pub struct AuditBlock {
     pub peak_active: Vec<u16>,
     /// Terms not projected to zero at the end; 0 for the dense read-out.
     pub terms_left: Vec<u32>,
+    /// Estimate of ‖Ω‖² the shot was accepted by; NaN where none was made.
+    pub norm: Vec<f64>,
 }
 
-/// One noise event that fired.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub struct FaultEvent {
-    /// Index of the shot in this file.
-    pub shot: u64,
-    /// Row of the table of locations.
-    pub location: u32,
-    /// The Pauli, see [`pauli_code`]; 0 where the event is not a Pauli (the kind
-    /// of the location then says what happened).
-    pub pauli: u64,
-}
-
-/// A Pauli word as one number: digit i in base 4 is the letter on qubit i of
-/// the location, 0 I, 1 X, 2 Y, 3 Z.
-pub fn pauli_code(word: PauliWord) -> u64 {
-    (0..32).fold(0, |code, qubit| {
-        let x = u64::from(word.x >> qubit & 1);
-        let z = u64::from(word.z >> qubit & 1);
-        // X is 1, Y is 2, Z is 3.
-        code | ((x ^ z) | z << 1) << (2 * qubit)
-    })
+impl AuditBlock {
+    /// The diagnostics of some shots, column by column.
+    pub fn new(shots: &[ShotAudit]) -> Self {
+        AuditBlock {
+            attempts: shots.iter().map(|shot| shot.attempts).collect(),
+            peak_active: shots.iter().map(|shot| shot.peak_active).collect(),
+            terms_left: shots.iter().map(|shot| shot.register.terms_left).collect(),
+            norm: shots.iter().map(|shot| shot.register.norm.unwrap_or(f64::NAN)).collect(),
+        }
+    }
 }
 
 /// Writes bits `first` .. `first` + `width` of every row of `words` words as
@@ -94,7 +50,7 @@ pub(super) fn unpack(bits: &[u64], words: usize, first: usize, width: usize, out
 
 /// Puts rows of `width` bytes (0 or 1) into bits `first` .. `first` + `width`
 /// of the rows of `block`, which must be 0 there.
-pub(super) fn pack(bytes: &[u8], width: usize, first: usize, block: &mut Block) {
+pub(super) fn pack(bytes: &[u8], width: usize, first: usize, block: &mut Rows) {
     if width == 0 {
         return;
     }
@@ -115,18 +71,6 @@ mod tests {
     use super::*;
     use proptest::prelude::*;
 
-    #[test]
-    fn pauli_letters_have_their_digits() {
-        let word = |x, z| PauliWord { x, z };
-        assert_eq!(pauli_code(word(0, 0)), 0);
-        assert_eq!(pauli_code(word(1, 0)), 1, "X on qubit 0");
-        assert_eq!(pauli_code(word(1, 1)), 2, "Y on qubit 0");
-        assert_eq!(pauli_code(word(0, 1)), 3, "Z on qubit 0");
-        // I X Y Z on qubits 0 to 3: 0 + 1·4 + 2·16 + 3·64.
-        assert_eq!(pauli_code(word(0b0110, 0b1100)), 228);
-        assert_eq!(pauli_code(word(0, 1 << 31)), 3 << 62);
-    }
-
     proptest! {
         #[test]
         fn unpacking_reads_every_bit_and_packing_puts_it_back(
@@ -134,7 +78,7 @@ mod tests {
         ) {
             let first = from % total;
             let width = (total - first).min(77);
-            let mut block = Block::zeros(rows, total);
+            let mut block = Rows::zeros(rows, total);
             let mut state = seed;
             for shot in 0..rows {
                 for bit in 0..total {
@@ -153,7 +97,7 @@ mod tests {
             prop_assert_eq!(&bools, &expected);
 
             let bytes: Vec<u8> = bools.iter().map(|&bit| u8::from(bit)).collect();
-            let mut again = Block::zeros(rows, total);
+            let mut again = Rows::zeros(rows, total);
             pack(&bytes, width, first, &mut again);
             for shot in 0..rows {
                 for bit in 0..total {

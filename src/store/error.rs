@@ -128,7 +128,7 @@ impl StoreError {
         StoreError::Hdf5 {
             action,
             path: path.to_owned(),
-            detail: deepest_cause(error),
+            detail: cause(error),
         }
     }
 
@@ -142,25 +142,21 @@ impl StoreError {
     }
 }
 
-/// The library's summary and, if the operating system was the cause, what it
-/// said: the deepest frame of the error stack carries the error number.
-fn deepest_cause(error: &hdf5::Error) -> String {
+/// What the operating system said, if it was the cause, else the library's own
+/// summary. The deepest frame of the error stack carries the system's words.
+fn cause(error: &hdf5::Error) -> String {
+    let summary = error.to_string();
     let hdf5::Error::HDF5(stack) = error else {
-        return error.to_string();
+        return summary;
     };
-    let Ok(stack) = stack.clone().expand() else {
-        return error.to_string();
+    let Ok(frames) = stack.clone().expand() else {
+        return summary;
     };
-    let summary = stack.description().to_owned();
-    let cause = stack
+    let system = frames
         .iter()
-        .map(|frame| frame.desc())
-        .find_map(|text| text.split("error message = '").nth(1))
-        .and_then(|rest| rest.split('\'').next());
-    match cause {
-        Some(cause) => format!("{summary} ({cause})"),
-        None => summary,
-    }
+        .filter_map(|frame| frame.desc().split("error message = '").nth(1))
+        .find_map(|rest| rest.split('\'').next());
+    system.map_or(summary, str::to_owned)
 }
 
 /// What to do about a cause the operating system named.

@@ -1,5 +1,7 @@
 //! What a result file says about the run that made it.
 
+use std::ops::Range;
+
 use super::StoreError;
 
 /// Value of the root attribute `format`.
@@ -64,6 +66,19 @@ pub struct Part {
     pub index: u64,
     /// Number of parts.
     pub count: u64,
+}
+
+impl Part {
+    /// The shots of this part when the whole run has `total`: the parts follow
+    /// one another without gaps and differ by at most one in length.
+    pub fn shots(self, total: u64) -> Range<u64> {
+        let border = |parts: u64| {
+            let shots = u128::from(total) * u128::from(parts) / u128::from(self.count.max(1));
+            // No more than `total` for any part there is.
+            u64::try_from(shots).unwrap_or(total)
+        };
+        border(self.index.saturating_sub(1))..border(self.index)
+    }
 }
 
 impl Default for Part {
@@ -164,6 +179,23 @@ const MOST_SETTINGS: usize = 4000;
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn parts_cover_the_run() {
+        for total in [0, 1, 7, 1000, u64::MAX] {
+            for count in [1, 2, 3, 10] {
+                let mut next = 0;
+                for index in 1..=count {
+                    let shots = Part { index, count }.shots(total);
+                    assert_eq!(shots.start, next);
+                    let length = shots.end - shots.start;
+                    assert!(length == total / count || length == total / count + 1);
+                    next = shots.end;
+                }
+                assert_eq!(next, total);
+            }
+        }
+    }
 
     /// ξ/(k − 1 + ξ) by hand: ξ = 4, k = 5 gives 4/8.
     #[test]

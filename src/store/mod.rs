@@ -5,7 +5,8 @@
 //! /                       attributes, see [`Header`]
 //! /shots/<register>       bool [shots, width]; attribute `role`
 //! /companion/<register>   the same for the companion shots, if drawn
-//! /audit/                 attempts u32, peak_active u16, terms_left u32, one
+//! /audit/                 attempts u32, peak_active u16, terms_left u32, norm
+//!                         f64 (estimate of ‖Ω‖², NaN where none was made), one
 //!                         value a shot; attribute `clipped`
 //! /faults/                with faults: shot u64, location u32, pauli u64, one
 //!                         entry an event, and the table `locations`
@@ -33,7 +34,7 @@ mod tables;
 mod temporary;
 mod writer;
 
-pub use block::{AuditBlock, Block, FaultEvent, pauli_code};
+pub use block::AuditBlock;
 pub use error::StoreError;
 pub use header::{
     FORMAT, FORMAT_VERSION, Header, LocationRow, Part, RegisterHeader, SiteRow, mixing_weight,

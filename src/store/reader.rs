@@ -10,7 +10,8 @@ use hdf5::{Dataset, File, Group, H5Type, IndexType, IterationOrder};
 use ndarray::{Array1, Array2, s};
 
 use super::layout::{self, LocationRecord, SiteRecord, plain};
-use super::{AuditBlock, Block, FORMAT, FORMAT_VERSION, FaultEvent, Header};
+use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header};
+use crate::sampler::{FaultEvent, Rows};
 use super::{Part, RegisterHeader, StoreError, block};
 
 /// Which of the two sets of rows.
@@ -126,6 +127,7 @@ impl ShotFile {
             attempts: self.column(&self.audit, "attempts", &range)?,
             peak_active: self.column(&self.audit, "peak_active", &range)?,
             terms_left: self.column(&self.audit, "terms_left", &range)?,
+            norm: self.column(&self.audit, "norm", &range)?,
         })
     }
 
@@ -204,9 +206,9 @@ pub struct Blocks<'a> {
 }
 
 impl Blocks<'_> {
-    fn read(&self, registers: &Registers, rows: Range<usize>) -> Result<Block, StoreError> {
+    fn read(&self, registers: &Registers, rows: Range<usize>) -> Result<Rows, StoreError> {
         let header = &self.file.header;
-        let mut block = Block::zeros(rows.len(), header.bits());
+        let mut block = Rows::zeros(rows.len(), header.bits());
         let mut first = 0;
         for (register, dataset) in header.registers.iter().zip(&registers.datasets) {
             let step = layout::chunk_columns(register.width).max(1);
@@ -231,7 +233,7 @@ impl Blocks<'_> {
 }
 
 impl Iterator for Blocks<'_> {
-    type Item = Result<Block, StoreError>;
+    type Item = Result<Rows, StoreError>;
 
     fn next(&mut self) -> Option<Self::Item> {
         let registers = self.file.family(self.family)?;

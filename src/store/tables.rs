@@ -10,7 +10,8 @@ use hdf5::types::VarLenUnicode;
 use hdf5::{Dataset, File, Group, H5Type};
 use ndarray::{ArrayView1, ArrayView2, s};
 
-use super::{Block, RegisterHeader, block, layout};
+use super::{RegisterHeader, block, layout};
+use crate::sampler::Rows;
 
 /// A group that lists its members in the order they were made.
 pub(super) fn new_group(file: &File, name: &str) -> hdf5::Result<Group> {
@@ -79,7 +80,7 @@ impl Table {
         })
     }
 
-    pub fn append(&mut self, block: &Block) -> hdf5::Result<()> {
+    pub fn append(&mut self, block: &Rows) -> hdf5::Result<()> {
         if block.words != self.words || block.bits.len() != block.shots * block.words {
             return Err(format!(
                 "a block of {} shots with {} words each has {} words; expected {} words a shot",

@@ -16,7 +16,8 @@ use super::StoreError;
 use super::layout::{self, LocationRecord, SiteRecord, text};
 use super::tables::{Column, Table, new_group};
 use super::temporary::Temporary;
-use super::{AuditBlock, Block, FORMAT, FORMAT_VERSION, FaultEvent, Header};
+use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header};
+use crate::sampler::{FaultEvent, Rows};
 
 /// What a [`Writer`] shall do besides writing shots.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -97,12 +98,12 @@ impl Writer {
 
     /// Appends shots; the block must have as many words a row as the header has
     /// bits.
-    pub fn append_shots(&mut self, block: &Block) -> Result<(), StoreError> {
+    pub fn append_shots(&mut self, block: &Rows) -> Result<(), StoreError> {
         self.write(|open| open.shots.append(block))
     }
 
     /// Appends companion shots, if the file was made with room for them.
-    pub fn append_companion(&mut self, block: &Block) -> Result<(), StoreError> {
+    pub fn append_companion(&mut self, block: &Rows) -> Result<(), StoreError> {
         self.write(|open| match &mut open.companion {
             Some(table) => table.append(block),
             None => Err("the file was made without companion shots".into()),
@@ -114,7 +115,8 @@ impl Writer {
         self.write(|open| {
             open.audit.attempts.append(&block.attempts)?;
             open.audit.peak_active.append(&block.peak_active)?;
-            open.audit.terms_left.append(&block.terms_left)
+            open.audit.terms_left.append(&block.terms_left)?;
+            open.audit.norm.append(&block.norm)
         })
     }
 
@@ -197,6 +199,7 @@ impl Open {
         self.audit.attempts.flush()?;
         self.audit.peak_active.flush()?;
         self.audit.terms_left.flush()?;
+        self.audit.norm.flush()?;
         number(&self.audit.group, "clipped", finished.clipped)?;
         if let Some(faults) = &mut self.faults {
             faults.shot.flush()?;
@@ -291,6 +294,7 @@ fn lay_out(
         attempts: Column::create(&group, "attempts")?,
         peak_active: Column::create(&group, "peak_active")?,
         terms_left: Column::create(&group, "terms_left")?,
+        norm: Column::create(&group, "norm")?,
         group,
     };
     if !options.faults {
@@ -367,6 +371,7 @@ struct Audit {
     attempts: Column<u32>,
     peak_active: Column<u16>,
     terms_left: Column<u32>,
+    norm: Column<f64>,
     group: Group,
 }
 

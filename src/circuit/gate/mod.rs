@@ -14,6 +14,9 @@ mod modify;
 #[cfg(test)]
 mod tests;
 
+pub use expand::Expansion;
+pub use modify::Parameters;
+
 /// Writes the enum and what is known of each gate from one list of
 /// `Variant "name" parameters qubits`.
 macro_rules! library {

@@ -15,26 +15,34 @@ impl<const W: usize> Bits<W> {
     /// Only this bit set.
     #[inline(always)]
     pub(crate) fn one(slot: usize) -> Self {
-        let mut words = [0; W];
-        words[slot / 64] = 1 << (slot % 64);
-        Self(words)
+        // No indexing by the slot: it would force the words out of registers.
+        Self(std::array::from_fn(|word| {
+            u64::from(word == slot / 64) << (slot % 64)
+        }))
     }
 
     /// The bits below `count` set.
     pub(crate) fn first(count: usize) -> Self {
-        Self(std::array::from_fn(|word| {
-            match count.saturating_sub(64 * word) {
-                0 => 0,
-                part @ 1..64 => (1 << part) - 1,
-                _ => !0,
-            }
-        }))
+        Self(std::array::from_fn(|word| Self::first_of_word(count, word)))
+    }
+
+    /// Word `word` of the set of bits below `count`.
+    #[inline(always)]
+    pub(crate) fn first_of_word(count: usize, word: usize) -> u64 {
+        match count.saturating_sub(64 * word) {
+            0 => 0,
+            part @ 1..64 => (1 << part) - 1,
+            _ => !0,
+        }
     }
 
     /// Whether this bit is set.
     #[inline(always)]
     pub(crate) fn has(self, slot: usize) -> bool {
-        self.0[slot / 64] >> (slot % 64) & 1 == 1
+        let word = (0..W).fold(0, |found, word| {
+            found | if word == slot / 64 { self.0[word] } else { 0 }
+        });
+        word >> (slot % 64) & 1 == 1
     }
 
     /// Whether no bit is set.
@@ -48,6 +56,24 @@ impl<const W: usize> Bits<W> {
     pub(crate) fn lowest(self) -> Option<usize> {
         let word = self.0.iter().position(|&word| word != 0)?;
         Some(64 * word + self.0[word].trailing_zeros() as usize)
+    }
+
+    /// The highest set bit.
+    #[inline(always)]
+    pub(crate) fn highest(self) -> Option<usize> {
+        self.length().checked_sub(1)
+    }
+
+    /// One more than the highest set bit, 0 if there is none.
+    #[inline(always)]
+    pub(crate) fn length(self) -> usize {
+        let mut length = 0;
+        for (word, bits) in self.0.iter().enumerate() {
+            if *bits != 0 {
+                length = 64 * word + 64 - bits.leading_zeros() as usize;
+            }
+        }
+        length
     }
 
     /// How many bits are set.

@@ -3,6 +3,7 @@
 //! This module knows nothing of Clifford frames, circuits or random numbers.
 
 pub(crate) mod bits;
+pub(crate) mod matrix;
 pub(crate) mod phase;
 pub(crate) mod term;
 
@@ -14,6 +15,7 @@ use num_complex::Complex64;
 pub use crate::magic::Stabiliser;
 
 use bits::Bits;
+use matrix::{Matrix, stride_of};
 use term::{Head, Term};
 
 /// A set of slots: bit s mod 64 of word s / 64 stands for slot s.
@@ -52,8 +54,9 @@ pub struct QuadraticPhase {
 pub struct Terms<const W: usize> {
     slots: usize,
     heads: Vec<Head<W>>,
-    /// `slots` rows a term.
-    rows: Vec<Bits<W>>,
+    /// A matrix of `stride` rows a term.
+    rows: Vec<u64>,
+    stride: usize,
 }
 
 impl<const W: usize> Terms<W> {
@@ -71,6 +74,7 @@ impl<const W: usize> Terms<W> {
             slots,
             heads: Vec::new(),
             rows: Vec::new(),
+            stride: stride_of(slots),
         }
     }
 
@@ -92,7 +96,7 @@ impl<const W: usize> Terms<W> {
                 .map(|(label, &weight)| Head::new(weight, label)),
         );
         // Rows are written before they are read: no need to clear them.
-        self.rows.resize(self.slots * weights.len(), Bits::ZERO);
+        self.rows.resize(self.words() * weights.len(), 0);
     }
 
     /// The capacity in slots.
@@ -201,20 +205,20 @@ impl<const W: usize> Terms<W> {
     pub fn certain(&self, index: usize, slot: usize) -> Option<bool> {
         self.check(slot);
         let head = &self.heads[index];
-        let free = !head.dependence(self.rows_of(index), slot).is_zero();
+        let free = !head.dependence(&self.matrix(index), slot).is_zero();
         (!free).then(|| head.shift.has(slot))
     }
 
     /// ⟨x|φ⟩ for a term φ; idle slots are |0⟩.
     pub fn amplitude(&self, index: usize, x: &Mask<W>) -> Complex64 {
-        self.heads[index].amplitude(self.rows_of(index), Bits(*x))
+        self.heads[index].amplitude(&self.matrix(index), Bits(*x))
     }
 
     /// ⟨x|Ω⟩, the sum of the amplitudes of all terms.
     pub fn total_amplitude(&self, x: &Mask<W>) -> Complex64 {
         let x = Bits(*x);
         self.views()
-            .map(|(head, rows)| head.amplitude(rows, x))
+            .map(|(head, rows)| head.amplitude(&rows, x))
             .sum()
     }
 
@@ -225,16 +229,22 @@ impl<const W: usize> Terms<W> {
 
     /// Bytes a term takes.
     pub fn bytes_per_term(&self) -> usize {
-        size_of::<Head<W>>() + self.slots * size_of::<Bits<W>>()
+        size_of::<Head<W>>() + self.words() * size_of::<u64>()
     }
 
     /// The terms, for reading.
-    pub(crate) fn views(&self) -> impl Iterator<Item = (&Head<W>, &[Bits<W>])> {
-        (0..self.len()).map(|index| (&self.heads[index], self.rows_of(index)))
+    pub(crate) fn views(&self) -> impl Iterator<Item = (&Head<W>, Matrix<&[u64], W>)> {
+        (0..self.len()).map(|index| (&self.heads[index], self.matrix(index)))
     }
 
-    fn rows_of(&self, index: usize) -> &[Bits<W>] {
-        &self.rows[index * self.slots..][..self.slots]
+    /// Words of a matrix.
+    fn words(&self) -> usize {
+        W * self.stride
+    }
+
+    fn matrix(&self, index: usize) -> Matrix<&[u64], W> {
+        let words = self.words();
+        Matrix::new(&self.rows[index * words..][..words], self.stride)
     }
 
     fn check(&self, slot: usize) {
@@ -248,10 +258,15 @@ impl<const W: usize> Terms<W> {
     /// Changes every term.
     #[inline(always)]
     fn each(&mut self, mut change: impl FnMut(Term<W>)) {
+        let words = self.words();
         let mut rows = &mut self.rows[..];
         for head in &mut self.heads {
-            let (own, others) = rows.split_at_mut(self.slots);
-            change(Term { head, rows: own });
+            let (own, others) = rows.split_at_mut(words);
+            let rows_of_term = Matrix::new(own, self.stride);
+            change(Term {
+                head,
+                rows: rows_of_term,
+            });
             rows = others;
         }
     }
@@ -259,20 +274,20 @@ impl<const W: usize> Terms<W> {
     /// Changes every term and keeps those for which `change` says so.
     #[inline(always)]
     fn retain(&mut self, mut change: impl FnMut(Term<W>) -> bool) {
-        let slots = self.slots;
+        let words = self.words();
         let mut kept = 0;
         for index in 0..self.heads.len() {
-            let start = index * slots;
+            let start = index * words;
             let term = Term {
                 head: &mut self.heads[index],
-                rows: &mut self.rows[start..start + slots],
+                rows: Matrix::new(&mut self.rows[start..start + words], self.stride),
             };
             if !change(term) {
                 continue;
             }
             if kept != index {
                 self.heads[kept] = self.heads[index];
-                self.rows.copy_within(start..start + slots, kept * slots);
+                self.rows.copy_within(start..start + words, kept * words);
             }
             kept += 1;
         }

@@ -4,6 +4,7 @@
 use num_complex::Complex64;
 
 use super::bits::Bits;
+use super::matrix::Matrix;
 use super::phase::{Diagonal, Factor};
 use super::{QuadraticPhase, Stabiliser};
 
@@ -42,32 +43,22 @@ impl<const W: usize> Head<W> {
 
     /// L_s: the parameters the bit of this slot depends on.
     #[inline(always)]
-    pub(crate) fn dependence(&self, rows: &[Bits<W>], slot: usize) -> Bits<W> {
+    pub(crate) fn dependence(&self, rows: &Matrix<impl AsRef<[u64]>, W>, slot: usize) -> Bits<W> {
         if self.pivots.has(slot) {
             return Bits::one(slot);
         }
-        let mut form = Bits::ZERO;
-        for p in self.pivots.ones() {
-            form |= Bits::one(p).when(rows[p].has(slot));
-        }
-        form
+        rows.column(self.pivots, slot)
     }
 
     /// Σ_{p∈a} R_p and B(a) mod 4, for a ⊆ V.
     #[inline(always)]
-    fn combine(&self, rows: &[Bits<W>], a: Bits<W>) -> (Bits<W>, u8) {
-        let mut sum = Bits::ZERO;
-        let mut pairs = false;
-        for p in a.ones() {
-            // Bit p of the rows before p: their pairs with p.
-            pairs ^= sum.has(p);
-            sum ^= rows[p];
-        }
+    fn combine(&self, rows: &Matrix<impl AsRef<[u64]>, W>, a: Bits<W>) -> (Bits<W>, u8) {
+        let (sum, pairs) = rows.combine(a);
         (sum, self.diagonal.total(a) ^ (u8::from(pairs) << 1))
     }
 
     /// ⟨x|φ⟩.
-    pub(crate) fn amplitude(&self, rows: &[Bits<W>], x: Bits<W>) -> Complex64 {
+    pub(crate) fn amplitude(&self, rows: &Matrix<impl AsRef<[u64]>, W>, x: Bits<W>) -> Complex64 {
         let (sum, quarters) = self.combine(rows, x & self.pivots);
         if !((sum ^ x ^ self.shift) & !self.pivots).is_zero() {
             return Complex64::ZERO;
@@ -85,7 +76,7 @@ pub(crate) struct Term<'a, const W: usize> {
     /// The words.
     pub(crate) head: &'a mut Head<W>,
     /// R, one row a slot.
-    pub(crate) rows: &'a mut [Bits<W>],
+    pub(crate) rows: Matrix<&'a mut [u64], W>,
 }
 
 /// What replaces a parameter: k·y ⊕ σ, and what the parameter was.
@@ -112,18 +103,16 @@ impl<const W: usize> Term<'_, W> {
         let head = &*self.head;
         let pivots = head.pivots;
         let a = x & pivots;
-        let (sum, quarters) = head.combine(self.rows, a);
+        let (sum, quarters) = head.combine(&self.rows, a);
 
         let mut slope = z & pivots;
         let outside = z & !pivots;
         if !outside.is_zero() {
-            for p in pivots.ones() {
-                slope ^= Bits::one(p).when((self.rows[p] & outside).parity());
-            }
+            slope ^= self.rows.odd_overlaps(pivots, outside);
         }
         let sign = (z & head.shift).parity() ^ (slope & a).parity();
         let e = (phase + quarters + 2 * u8::from(sign)) & 3;
-        let lambda = slope ^ (sum & pivots) ^ (a & head.diagonal.low);
+        let lambda = slope ^ (sum & pivots);
 
         let d = (sum ^ x) & !pivots;
         if let Some(pivot) = d.lowest() {
@@ -144,11 +133,12 @@ impl<const W: usize> Term<'_, W> {
     #[inline(always)]
     fn grow(&mut self, pivot: usize, d: Bits<W>, m: Bits<W>, b: u8) {
         let here = Bits::one(pivot);
-        let form = self.head.dependence(self.rows, pivot) | here;
+        let form = self.head.dependence(&self.rows, pivot) | here;
         let offset = self.head.shift.has(pivot);
         self.head.shift ^= d.when(offset);
         self.head.pivots |= here;
-        self.rows[pivot] = Bits::ZERO;
+        // The bit the generator will take from it.
+        self.rows.set_row(pivot, here);
         self.substitute(&Substitution {
             form,
             offset,
@@ -168,12 +158,12 @@ impl<const W: usize> Term<'_, W> {
             return !sigma;
         };
         let here = Bits::one(pivot);
-        let row = self.rows[pivot];
+        let row = self.rows.row(pivot);
         let quarters = self.head.diagonal.take(pivot);
         let generator = (row & !self.head.pivots) | here;
         self.head.shift ^= generator.when(sigma);
-        let m = row & self.head.pivots;
         self.head.pivots &= !here;
+        let m = row & self.head.pivots;
         self.head.factor.double_halves(-1);
         self.substitute(&Substitution {
             form: lambda & !here,
@@ -191,9 +181,7 @@ impl<const W: usize> Term<'_, W> {
     #[inline(always)]
     fn square(&mut self, form: Bits<W>, b: u8) {
         if b & 1 == 1 {
-            for p in form.ones() {
-                self.rows[p] ^= form & !Bits::one(p);
-            }
+            self.rows.add((form, form), (Bits::ZERO, Bits::ZERO));
         }
         self.head.diagonal.add(b, form);
     }
@@ -203,13 +191,7 @@ impl<const W: usize> Term<'_, W> {
     #[inline(always)]
     fn substitute(&mut self, s: &Substitution<W>) {
         let on_form = s.generator ^ s.row ^ s.form.when(s.quarters & 1 == 1);
-        for p in s.form.ones() {
-            self.rows[p] = (self.rows[p] ^ on_form) & !Bits::one(p);
-        }
-        let on_row = s.form ^ s.moved;
-        for p in s.row.ones() {
-            self.rows[p] = (self.rows[p] ^ on_row) & !Bits::one(p);
-        }
+        self.rows.add((s.form, on_form), (s.row, s.form ^ s.moved));
         let diagonal = &mut self.head.diagonal;
         diagonal.substitute(s.quarters, s.offset, s.form, s.row);
         if s.offset {
@@ -233,7 +215,7 @@ impl<const W: usize> Term<'_, W> {
             Stabiliser::MinusI => 3,
         };
         self.head.pivots |= here;
-        self.rows[slot] = Bits::ZERO;
+        self.rows.set_row(slot, here.when(quarters & 1 == 1));
         self.head.diagonal.add(quarters, here);
     }
 
@@ -246,16 +228,16 @@ impl<const W: usize> Term<'_, W> {
         }
         if self.head.shift.has(slot) {
             self.head.factor.turn_quarters(power);
-            self.square(self.head.dependence(self.rows, slot), 4 - power);
+            self.square(self.head.dependence(&self.rows, slot), 4 - power);
         } else {
-            self.square(self.head.dependence(self.rows, slot), power);
+            self.square(self.head.dependence(&self.rows, slot), power);
         }
     }
 
     /// Signs by up to three bits and their pairs.
     #[inline(always)]
     pub(crate) fn quadratic(&mut self, slots: [usize; 3], phase: QuadraticPhase) {
-        let forms = slots.map(|slot| self.head.dependence(self.rows, slot));
+        let forms = slots.map(|slot| self.head.dependence(&self.rows, slot));
         let offsets = slots.map(|slot| self.head.shift.has(slot));
         let mut sign = phase.negative;
         for i in 0..3 {
@@ -268,12 +250,7 @@ impl<const W: usize> Term<'_, W> {
             if !phase.cz[pair] {
                 continue;
             }
-            for p in forms[i].ones() {
-                self.rows[p] ^= forms[j];
-            }
-            for p in forms[j].ones() {
-                self.rows[p] ^= forms[i];
-            }
+            self.rows.add((forms[i], forms[j]), (forms[j], forms[i]));
             self.head.diagonal.high ^=
                 (forms[i] & forms[j]) ^ forms[i].when(offsets[j]) ^ forms[j].when(offsets[i]);
             sign ^= offsets[i] & offsets[j];
@@ -289,18 +266,18 @@ impl<const W: usize> Term<'_, W> {
             head.shift ^= Bits::one(slot);
             return;
         }
-        let row = self.rows[slot];
+        let row = self.rows.row(slot);
         head.shift ^= row & !head.pivots;
         let quarters = head.diagonal.at(slot);
         head.factor.turn_quarters(quarters);
-        head.diagonal.high ^= (row & head.pivots) | Bits::one(slot).when(quarters & 1 == 1);
+        head.diagonal.high ^= row & head.pivots;
     }
 
     /// Projects on Z_slot = (−1)^value and leaves the slot idle. Returns
     /// whether anything is left.
     #[inline(always)]
     pub(crate) fn measured(&mut self, slot: usize, value: bool) -> bool {
-        let lambda = self.head.dependence(self.rows, slot);
+        let lambda = self.head.dependence(&self.rows, slot);
         let sigma = self.head.shift.has(slot) ^ value;
         let kept = self.restrict(lambda, lambda.lowest(), sigma);
         self.head.shift &= !Bits::one(slot);
@@ -311,7 +288,7 @@ impl<const W: usize> Term<'_, W> {
     #[inline(always)]
     pub(crate) fn controlled_not(&mut self, control: usize, target: usize) {
         if self.head.pivots.has(target) {
-            let form = self.head.dependence(self.rows, control);
+            let form = self.head.dependence(&self.rows, control);
             if !form.has(target) {
                 self.shift_pivot(target, form, self.head.shift.has(control));
                 return;
@@ -319,24 +296,23 @@ impl<const W: usize> Term<'_, W> {
             self.exchange(target, control, form);
         }
         let there = Bits::one(target);
-        for p in self.head.dependence(self.rows, control).ones() {
-            self.rows[p] ^= there;
-        }
+        let form = self.head.dependence(&self.rows, control);
+        self.rows.add((form, there), (Bits::ZERO, Bits::ZERO));
         self.head.shift ^= there.when(self.head.shift.has(control));
     }
 
     /// The bit of a pivot becomes x_j ⊕ k·y ⊕ σ, k without j.
     fn shift_pivot(&mut self, pivot: usize, form: Bits<W>, sigma: bool) {
         let here = Bits::one(pivot);
-        let row = self.rows[pivot];
+        let row = self.rows.row(pivot);
         let quarters = self.head.diagonal.take(pivot);
         let generator = row & !self.head.pivots;
         self.head.shift ^= generator.when(sigma);
-        self.rows[pivot] = Bits::ZERO;
+        self.rows.set_row(pivot, Bits::ZERO);
         self.substitute(&Substitution {
             form: form | here,
             offset: sigma,
-            row: row & self.head.pivots,
+            row: row & self.head.pivots & !here,
             quarters,
             generator,
             // The old pairs stay where the new ones go.
@@ -348,14 +324,14 @@ impl<const W: usize> Term<'_, W> {
     /// has `old`.
     fn exchange(&mut self, old: usize, new: usize, form: Bits<W>) {
         let (there, here) = (Bits::one(old), Bits::one(new));
-        let row = self.rows[old];
+        let row = self.rows.row(old);
         let quarters = self.head.diagonal.take(old);
         let generator = (row & !self.head.pivots) | there;
         let offset = self.head.shift.has(new);
         self.head.shift ^= generator.when(offset);
-        let m = row & self.head.pivots;
+        let m = row & self.head.pivots & !there;
         self.head.pivots = (self.head.pivots & !there) | here;
-        self.rows[new] = Bits::ZERO;
+        self.rows.set_row(new, here);
         self.substitute(&Substitution {
             form: (form & !there) | here,
             offset,

@@ -1,0 +1,50 @@
+//! What a person wants to know about a result first.
+//!
+//! [`Summary::from_file`] reads a result file once and counts; the summary
+//! prints itself as text ([`Display`](std::fmt::Display)) for a terminal of 80
+//! columns, or as one JSON document ([`Summary::to_json`]).
+//!
+//! # The JSON document
+//!
+//! Field names are stable; a later version may add fields. An absent value is
+//! `null`.
+//!
+//! ```text
+//! { "file", "program_version", "circuit", "noise", "title",      texts
+//!   "qubits", "seed", "shots", "shots_total", "shots_planned",   whole numbers
+//!   "companion_shots", "clipped", "terms",
+//!   "part": { "index", "count" },
+//!   "complete": bool            whether all planned shots are in the file
+//!   "readout": text, "delta", "mixing_weight",
+//!   "sites": { "count", "kept",
+//!              "log10_extent_without_noise", "log10_extent", "extent" },
+//!   "draws": { "mean_attempts", "peak_active", "mean_terms_left" },
+//!   "settings": [[name, value], …],
+//!   "registers": [
+//!     { "name", "role", "width",
+//!       "any_nonzero": QUANTITY, "mean_weight": QUANTITY,
+//!       "bits": [QUANTITY, …]            frequency of 1, bit 0 first
+//!       "distinct_outcomes": number,
+//!       "outcomes": [ { "bits": text, "frequency": QUANTITY }, … ] } ] }
+//! QUANTITY = { "raw": ESTIMATE, "companion": ESTIMATE, "corrected": ESTIMATE }
+//! ESTIMATE = { "value", "standard_error", "limit_95" }
+//! ```
+//!
+//! `shots_planned` is the share of this part in `shots_total`. `extent` is
+//! `null` where it leaves the range of a double. `outcomes` holds the most
+//! frequent words of a register of up to 64 bits, bit 0 on the right; it is
+//! `null` for wider registers and where too many different words turned up to
+//! count them. `corrected` is explained at [`estimate`]; it is `null` without
+//! companion shots and where there is nothing to correct.
+//!
+//! This module knows result files, and nothing of how shots are drawn.
+
+pub mod estimate;
+mod number;
+mod summary;
+mod tally;
+mod text;
+
+pub use estimate::{Estimate, Sample};
+pub use number::format_extent;
+pub use summary::{Draws, Outcome, Quantity, RegisterSummary, Sites, Summary};

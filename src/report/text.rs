@@ -1,0 +1,254 @@
+//! The summary as text for a terminal of 80 columns.
+
+use std::fmt::{self, Display, Formatter};
+
+use super::number::{format_estimate, format_extent, format_plain};
+use super::summary::{Outcome, Quantity, RegisterSummary, Summary};
+
+/// Most bits of a register that are listed one by one.
+const MOST_BITS: usize = 16;
+/// Outcomes of wider registers are printed in hexadecimal.
+const MOST_BINARY_DIGITS: usize = 28;
+
+impl Display for Summary {
+    fn fmt(&self, out: &mut Formatter<'_>) -> fmt::Result {
+        line(out, "result", &self.result())?;
+        line(out, "circuit", &self.circuit_line())?;
+        if let Some(noise) = &self.noise {
+            let title = self.title.as_ref().map(|title| format!(" ({title})"));
+            line(
+                out,
+                "noise file",
+                &format!("{noise}{}", title.unwrap_or_default()),
+            )?;
+        }
+        line(out, "sites", &self.sites_line())?;
+        line(out, "extent ξ", &self.extent_line())?;
+        line(out, "precision", &self.precision())?;
+        line(out, "shots", &self.shots_line())?;
+        line(out, "seed", &self.seed.to_string())?;
+        if !self.settings.is_empty() {
+            let settings: Vec<String> = self
+                .settings
+                .iter()
+                .map(|(name, value)| format!("{name}={value}"))
+                .collect();
+            line(out, "settings", &settings.join("  "))?;
+        }
+        if let Some(draws) = &self.draws {
+            let mut text = format!(
+                "{} draws a shot, at most {} active qubits",
+                format_plain(draws.mean_attempts),
+                draws.peak_active
+            );
+            if self.clipped > 0 {
+                text += &format!(", {} shots clipped", self.clipped);
+            }
+            line(out, "sampling", &text)?;
+        }
+        for register in &self.registers {
+            self.register(out, register)?;
+        }
+        self.notes(out)
+    }
+}
+
+impl Summary {
+    fn result(&self) -> String {
+        match self.part.count {
+            1 => self.file.clone(),
+            count => format!("{}, part {} of {count}", self.file, self.part.index),
+        }
+    }
+
+    fn circuit_line(&self) -> String {
+        match self.qubits {
+            Some(1) => format!("{}, 1 qubit", self.circuit),
+            Some(qubits) => format!("{}, {qubits} qubits", self.circuit),
+            None => self.circuit.clone(),
+        }
+    }
+
+    fn sites_line(&self) -> String {
+        let count = self.sites.count;
+        match count - self.sites.kept {
+            0 => format!("{count} non-Clifford places"),
+            idle => format!("{count} non-Clifford places, {idle} of them without effect"),
+        }
+    }
+
+    fn extent_line(&self) -> String {
+        let extent = |log10: f64| format_extent(log10 * std::f64::consts::LN_10);
+        format!(
+            "{} without noise, {} in this run",
+            extent(self.sites.log10_extent_without_noise),
+            extent(self.sites.log10_extent)
+        )
+    }
+
+    fn precision(&self) -> String {
+        let Some(terms) = self.terms else {
+            return format!("exact (read-out {})", self.readout);
+        };
+        let delta = self
+            .delta
+            .map(|delta| format!("δ = {}, ", format_plain(delta)));
+        format!(
+            "{}k = {terms} terms, λ = {} (read-out {})",
+            delta.unwrap_or_default(),
+            format_plain(self.mixing_weight),
+            self.readout
+        )
+    }
+
+    fn shots_line(&self) -> String {
+        let mut text = self.shots.to_string();
+        if let Some(companion) = self.companion_shots {
+            text += &format!(", {companion} companion shots");
+        }
+        if !self.complete {
+            text += &format!("; interrupted, {} were planned", self.shots_planned);
+        } else if self.part.count > 1 {
+            text += &format!("; {} in the whole run", self.shots_total);
+        }
+        text
+    }
+
+    /// Whether any number has a corrected twin.
+    fn has_correction(&self) -> bool {
+        let corrected = |register: &RegisterSummary| register.any_nonzero.corrected.is_some();
+        self.registers.iter().any(corrected)
+    }
+
+    fn register(&self, out: &mut Formatter<'_>, register: &RegisterSummary) -> fmt::Result {
+        let bits = if register.width == 1 { "bit" } else { "bits" };
+        let title = format!(
+            "{} ({}, {} {bits})",
+            register.name, register.role, register.width
+        );
+        writeln!(out)?;
+        if self.shots == 0 || register.width == 0 {
+            return writeln!(out, "{title}");
+        }
+        let rows = rows_of(register, self.shots);
+        let label = rows
+            .iter()
+            .map(|(label, _)| label.chars().count() + 2)
+            .chain([title.chars().count(), 24])
+            .max()
+            .unwrap_or(0);
+        let with_correction = self.has_correction();
+        let heading = if with_correction { "corrected" } else { "" };
+        let heading = format!("{title:label$}  {:22}  {heading}", "as drawn");
+        writeln!(out, "{}", heading.trim_end())?;
+        for (name, quantity) in rows {
+            let show =
+                |estimate| Option::as_ref(estimate).map_or_else(String::new, format_estimate);
+            let text = format!(
+                "  {name:indent$}  {:22}  {}",
+                show(&quantity.raw),
+                show(&quantity.corrected),
+                indent = label - 2
+            );
+            writeln!(out, "{}", text.trim_end())?;
+        }
+        if let Some(rest) = what_is_left_out(register, self.shots) {
+            writeln!(out, "  … {rest}")?;
+        }
+        Ok(())
+    }
+
+    fn notes(&self, out: &mut Formatter<'_>) -> fmt::Result {
+        if self.shots == 0 || self.registers.is_empty() {
+            return Ok(());
+        }
+        writeln!(out)?;
+        writeln!(out, "± is one standard error; (< or >) is a 95 % limit.")?;
+        let has_outcomes = |register| listed_outcomes(register, self.shots).is_some();
+        if self.registers.iter().any(has_outcomes) {
+            writeln!(out, "Outcomes are written with bit 0 on the right.")?;
+        }
+        if self.has_correction() {
+            writeln!(
+                out,
+                "Corrected: the companion's share λ taken out; unbiased."
+            )?;
+        } else if self.terms == Some(1) {
+            writeln!(
+                out,
+                "With k = 1 the shots are companion shots; nothing can be corrected."
+            )?;
+        } else if self.terms.is_some() && self.companion_shots.unwrap_or(0) == 0 {
+            writeln!(
+                out,
+                "For corrected numbers draw companion shots (--companion)."
+            )?;
+        }
+        Ok(())
+    }
+}
+
+/// One line of the head.
+fn line(out: &mut Formatter<'_>, name: &str, value: &str) -> fmt::Result {
+    writeln!(out, "{name:11} {value}")
+}
+
+/// The lines of a register: checks as a whole, logical readouts bit by bit,
+/// records by their outcomes where any was seen twice.
+fn rows_of(register: &RegisterSummary, shots: u64) -> Vec<(String, &Quantity)> {
+    if register.role == "check" {
+        return vec![
+            ("any nonzero".to_owned(), &register.any_nonzero),
+            ("mean weight".to_owned(), &register.mean_weight),
+        ];
+    }
+    match listed_outcomes(register, shots) {
+        Some(outcomes) => outcomes
+            .iter()
+            .map(|outcome| (label(outcome), &outcome.frequency))
+            .collect(),
+        None => register
+            .bits
+            .iter()
+            .take(MOST_BITS)
+            .enumerate()
+            .map(|(index, quantity)| (format!("bit {index} is 1"), quantity))
+            .collect(),
+    }
+}
+
+fn listed_outcomes(register: &RegisterSummary, shots: u64) -> Option<&[Outcome]> {
+    let outcomes = register.outcomes.as_deref()?;
+    // Where every word was seen once the bits say more.
+    let most = outcomes.first()?.frequency.raw?.value;
+    let repeated = most * shots as f64 > 1.5;
+    (repeated || outcomes.len() as u64 == register.distinct_outcomes?).then_some(outcomes)
+}
+
+fn label(outcome: &Outcome) -> String {
+    match u64::from_str_radix(&outcome.bits, 2) {
+        Ok(word) if outcome.bits.len() > MOST_BINARY_DIGITS => {
+            format!(
+                "0x{word:0digits$x}",
+                digits = outcome.bits.len().div_ceil(4)
+            )
+        }
+        _ => outcome.bits.clone(),
+    }
+}
+
+fn what_is_left_out(register: &RegisterSummary, shots: u64) -> Option<String> {
+    if register.role == "check" {
+        return None;
+    }
+    match listed_outcomes(register, shots) {
+        Some(outcomes) => {
+            let more = register.distinct_outcomes? - outcomes.len() as u64;
+            (more > 0).then(|| format!("{more} more outcomes"))
+        }
+        None => {
+            let more = register.width.saturating_sub(MOST_BITS);
+            (more > 0).then(|| format!("{more} more bits (all with --json)"))
+        }
+    }
+}
