@@ -213,14 +213,10 @@ fn the_same_seed_gives_the_same_bits() {
     let (folder, ..) = prepared();
     for readout in ["dense", "probe"] {
         let common = ["--shots", "3000", "--readout", readout, "--terms", "6", "--companion", "2000"];
-        let with = |more: &[&str]| {
-            let mut options = common.to_vec();
-            options.extend(more);
-            options
-        };
-        let one = drawn(&folder, "one.h5", &with(&["--seed", "5", "--threads", "1", "--force"]));
-        let two = drawn(&folder, "two.h5", &with(&["--seed", "5", "--threads", "2", "--force"]));
-        let other = drawn(&folder, "other.h5", &with(&["--seed", "6", "--force"]));
+        let with = |out: &str, more: &[&str]| drawn(&folder, out, &[&common, more].concat());
+        let one = with("one.h5", &["--seed", "5", "--threads", "1", "--force"]);
+        let two = with("two.h5", &["--seed", "5", "--threads", "2", "--force"]);
+        let other = with("other.h5", &["--seed", "6", "--force"]);
         assert_eq!(one.len(), 4);
         assert_eq!(one, two, "{readout}");
         assert_ne!(one, other, "{readout}");
