@@ -19,7 +19,9 @@ fn draw(circuit: &Circuit, shots: u64, seed: u64, options: &[&str]) -> (Vec<u64>
     let folder = Folder::new();
     let file = folder.write("circuit.qasm", circuit.text());
     let (shots, seed, out) = (shots.to_string(), seed.to_string(), folder.text("out.h5"));
-    let mut arguments = vec!["run", &file, "--shots", &shots, "--seed", &seed, "--out", &out];
+    let mut arguments = vec![
+        "run", &file, "--shots", &shots, "--seed", &seed, "--out", &out,
+    ];
     arguments.push("--quiet");
     arguments.extend(options);
     succeed(&arguments);
@@ -28,7 +30,11 @@ fn draw(circuit: &Circuit, shots: u64, seed: u64, options: &[&str]) -> (Vec<u64>
 
 fn check(name: &str, circuit: &Circuit, law: &[f64], counts: &[u64]) {
     let p_value = fit_p_value(counts, law);
-    assert!(p_value > FALSE_ALARM, "{name}: {counts:?} for {law:?}\n{}", circuit.text());
+    assert!(
+        p_value > FALSE_ALARM,
+        "{name}: {counts:?} for {law:?}\n{}",
+        circuit.text()
+    );
 }
 
 /// h, t, h, measure.
@@ -57,7 +63,9 @@ fn ghz(count: usize, rotated: usize, p: f64) -> Circuit {
     circuit.measure_all();
     let parity: Vec<String> = (0..count).map(|i| format!("c[{i}]")).collect();
     let mask = (1 << count) - 1;
-    circuit.assign(count, &parity.join(" ^ "), move |bits| (bits & mask).count_ones() % 2 == 1);
+    circuit.assign(count, &parity.join(" ^ "), move |bits| {
+        (bits & mask).count_ones() % 2 == 1
+    });
     circuit
 }
 
@@ -93,7 +101,10 @@ fn even(law: &[f64]) -> f64 {
 #[test]
 fn the_reference_gives_published_values() {
     let near = |value: f64, published: f64| {
-        assert!((value - published).abs() < 1e-11, "{value} is not {published}");
+        assert!(
+            (value - published).abs() < 1e-11,
+            "{value} is not {published}"
+        );
     };
     near(one_t().law()[0], 0.853553390593);
     near(even(&ghz(4, 3, 0.1).law()), 0.318980664016);
@@ -104,8 +115,14 @@ fn the_reference_gives_published_values() {
         2.0 * one_qubit(amplitude_damping(gamma), [polar, azimuth, 0.0], after).law()[0] - 1.0
     };
     near(damped(&[]), gamma + (1.0 - gamma) * polar.cos());
-    near(damped(&["h"]), (1.0 - gamma).sqrt() * polar.sin() * azimuth.cos());
-    near(damped(&["sdg", "h"]), (1.0 - gamma).sqrt() * polar.sin() * azimuth.sin());
+    near(
+        damped(&["h"]),
+        (1.0 - gamma).sqrt() * polar.sin() * azimuth.cos(),
+    );
+    near(
+        damped(&["sdg", "h"]),
+        (1.0 - gamma).sqrt() * polar.sin() * azimuth.sin(),
+    );
     let plus = [std::f64::consts::FRAC_PI_2, 0.0, 0.0];
     let relaxed = one_qubit(relaxation(80.0, 60.0, 5.0), plus, &["h"]).law()[0];
     near(2.0 * relaxed - 1.0, 0.920044414629);
@@ -124,12 +141,20 @@ fn published_circuits_in_dense() {
         ("h t h", one_t()),
         ("ghz 4", ghz(4, 3, 0.1)),
         ("bell", bell(&[depolarizing(0.1, 2)])),
-        ("damped", one_qubit(amplitude_damping(0.2), [1.0, 0.7, 0.0], &["sdg", "h"])),
+        (
+            "damped",
+            one_qubit(amplitude_damping(0.2), [1.0, 0.7, 0.0], &["sdg", "h"]),
+        ),
     ]
     .into_iter()
     .enumerate()
     {
-        let (counts, _) = draw(&circuit, 2 * SHOTS, 10 + seed as u64, &["--readout", "dense"]);
+        let (counts, _) = draw(
+            &circuit,
+            2 * SHOTS,
+            10 + seed as u64,
+            &["--readout", "dense"],
+        );
         check(name, &circuit, &circuit.law(), &counts);
     }
 }
@@ -205,8 +230,9 @@ fn random_gates(circuit: &mut Circuit, random: &mut Random, count: usize) {
             qubits.swap(i, i + random.below(QUBITS - i));
         }
         let angles: Vec<f64> = (0..angles).map(|_| random.number(-3.2, 3.2)).collect();
-        let noise: Vec<Channel> =
-            (0..random.below(5) / 3).map(|_| random.channel(width)).collect();
+        let noise: Vec<Channel> = (0..random.below(5) / 3)
+            .map(|_| random.channel(width))
+            .collect();
         circuit.gate(name, &angles, &qubits[..width], &noise);
     }
 }
@@ -221,7 +247,11 @@ fn random_circuit(seed: u64) -> Circuit {
     }
     random_gates(&mut circuit, &mut random, 6);
     let (measured, reset) = (random.below(QUBITS), random.below(QUBITS));
-    circuit.measure(measured, 3, [random.number(0.0, 0.1), random.number(0.0, 0.1)]);
+    circuit.measure(
+        measured,
+        3,
+        [random.number(0.0, 0.1), random.number(0.0, 0.1)],
+    );
     let mut inner = Random(random.next());
     let mut other = Random(random.next());
     circuit.when(

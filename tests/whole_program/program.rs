@@ -11,7 +11,9 @@ pub struct Folder {
 impl Folder {
     /// An empty directory.
     pub fn new() -> Self {
-        Folder { directory: tempfile::tempdir().expect("a temporary directory") }
+        Folder {
+            directory: tempfile::tempdir().expect("a temporary directory"),
+        }
     }
 
     /// Path of a file in it.
@@ -27,7 +29,10 @@ impl Folder {
 
     /// Path of a file in it as text.
     pub fn text(&self, name: &str) -> String {
-        self.path(name).to_str().expect("a path in UTF-8").to_owned()
+        self.path(name)
+            .to_str()
+            .expect("a path in UTF-8")
+            .to_owned()
     }
 }
 
@@ -59,7 +64,11 @@ pub fn succeed(arguments: &[&str]) -> String {
 pub fn fail(status: i32, arguments: &[&str]) -> String {
     let output = call(arguments);
     let message = stderr(&output);
-    assert_eq!(output.status.code(), Some(status), "{arguments:?}\n{message}");
+    assert_eq!(
+        output.status.code(),
+        Some(status),
+        "{arguments:?}\n{message}"
+    );
     assert!(!message.contains("panicked"), "{message}");
     message
 }
@@ -72,7 +81,9 @@ pub fn stderr(output: &Output) -> String {
 /// The datasets of a group, by name: number of rows and the rows in order.
 pub fn tables(file: &Path, group: &str) -> Vec<(String, usize, Vec<bool>)> {
     let file = hdf5::File::open(file).expect("an HDF5 file");
-    let Ok(group) = file.group(group) else { return Vec::new() };
+    let Ok(group) = file.group(group) else {
+        return Vec::new();
+    };
     let mut names = group.member_names().expect("members");
     names.sort();
     let read = |name: String| {
@@ -87,12 +98,17 @@ pub fn tables(file: &Path, group: &str) -> Vec<(String, usize, Vec<bool>)> {
 /// How often every value of the register came, bit 0 least significant.
 pub fn counts(file: &Path, register: &str, width: usize) -> Vec<u64> {
     let tables = tables(file, "shots");
-    let (_, rows, bits) =
-        tables.iter().find(|(name, ..)| name == register).expect("the register is recorded");
+    let (_, rows, bits) = tables
+        .iter()
+        .find(|(name, ..)| name == register)
+        .expect("the register is recorded");
     assert_eq!(bits.len(), rows * width);
     let mut counts = vec![0; 1 << width];
     for row in bits.chunks(width) {
-        let value = row.iter().rev().fold(0, |sum, &bit| sum << 1 | usize::from(bit));
+        let value = row
+            .iter()
+            .rev()
+            .fold(0, |sum, &bit| sum << 1 | usize::from(bit));
         counts[value] += 1;
     }
     counts

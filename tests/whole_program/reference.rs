@@ -17,10 +17,24 @@ type Condition = Box<dyn Fn(u64) -> bool>;
 
 enum Step {
     /// Σ K ρ K† on some qubits; qubit i of the list is bit i of an index of K.
-    Kraus { qubits: Vec<usize>, operators: Vec<Matrix> },
-    Measure { qubit: usize, bit: usize, flip: [f64; 2] },
-    Assign { bit: usize, value: Condition },
-    If { condition: Condition, then: Vec<Step>, otherwise: Vec<Step> },
+    Kraus {
+        qubits: Vec<usize>,
+        operators: Vec<Matrix>,
+    },
+    Measure {
+        qubit: usize,
+        bit: usize,
+        flip: [f64; 2],
+    },
+    Assign {
+        bit: usize,
+        value: Condition,
+    },
+    If {
+        condition: Condition,
+        then: Vec<Step>,
+        otherwise: Vec<Step>,
+    },
 }
 
 /// A noise channel: its text and its meaning.
@@ -37,17 +51,26 @@ fn complex(re: f64, im: f64) -> Complex64 {
 }
 
 fn real(rows: [[f64; 2]; 2]) -> Matrix {
-    rows.iter().map(|row| row.iter().map(|&v| complex(v, 0.0)).collect()).collect()
+    rows.iter()
+        .map(|row| row.iter().map(|&v| complex(v, 0.0)).collect())
+        .collect()
 }
 
 fn scaled(matrix: &Matrix, factor: f64) -> Matrix {
-    matrix.iter().map(|row| row.iter().map(|v| v * factor).collect()).collect()
+    matrix
+        .iter()
+        .map(|row| row.iter().map(|v| v * factor).collect())
+        .collect()
 }
 
 fn product(a: &Matrix, b: &Matrix) -> Matrix {
     let n = a.len();
     (0..n)
-        .map(|i| (0..n).map(|j| (0..n).map(|k| a[i][k] * b[k][j]).sum()).collect())
+        .map(|i| {
+            (0..n)
+                .map(|j| (0..n).map(|k| a[i][k] * b[k][j]).sum())
+                .collect()
+        })
         .collect()
 }
 
@@ -55,7 +78,11 @@ fn product(a: &Matrix, b: &Matrix) -> Matrix {
 fn tensor(high: &Matrix, low: &Matrix) -> Matrix {
     let (n, m) = (high.len(), low.len());
     (0..n * m)
-        .map(|i| (0..n * m).map(|j| high[i / m][j / m] * low[i % m][j % m]).collect())
+        .map(|i| {
+            (0..n * m)
+                .map(|j| high[i / m][j / m] * low[i % m][j % m])
+                .collect()
+        })
         .collect()
 }
 
@@ -72,7 +99,8 @@ fn pauli(letter: u8) -> Matrix {
 /// Letter i acts on qubit i, which is bit i of the index.
 fn pauli_word(word: &str) -> Matrix {
     let identity = vec![vec![complex(1.0, 0.0)]];
-    word.bytes().fold(identity, |low, letter| tensor(&pauli(letter), &low))
+    word.bytes()
+        .fold(identity, |low, letter| tensor(&pauli(letter), &low))
 }
 
 fn universal([theta, phi, lambda]: [f64; 3]) -> Matrix {
@@ -86,24 +114,44 @@ fn universal([theta, phi, lambda]: [f64; 3]) -> Matrix {
 
 /// A random Pauli; the identity takes the rest.
 pub fn pauli_channel(words: &[(&str, f64)]) -> Channel {
-    let listed: Vec<String> = words.iter().map(|(word, p)| format!("{word}={p}")).collect();
+    let listed: Vec<String> = words
+        .iter()
+        .map(|(word, p)| format!("{word}={p}"))
+        .collect();
     let width = words[0].0.len();
     let rest = 1.0 - words.iter().map(|(_, p)| p).sum::<f64>();
-    let mut operators = vec![scaled(&pauli_word(&"I".repeat(width)), rest.max(0.0).sqrt())];
-    operators.extend(words.iter().map(|(word, p)| scaled(&pauli_word(word), p.sqrt())));
-    Channel { text: format!("pauli({})", listed.join(", ")), joint: true, operators }
+    let mut operators = vec![scaled(
+        &pauli_word(&"I".repeat(width)),
+        rest.max(0.0).sqrt(),
+    )];
+    operators.extend(
+        words
+            .iter()
+            .map(|(word, p)| scaled(&pauli_word(word), p.sqrt())),
+    );
+    Channel {
+        text: format!("pauli({})", listed.join(", ")),
+        joint: true,
+        operators,
+    }
 }
 
 /// Depolarizing on all qubits of a call, `width` of them, by listing all words.
 pub fn depolarizing(p: f64, width: usize) -> Channel {
     let mut words = vec![String::new()];
     for _ in 0..width {
-        words = words.iter().flat_map(|w| ["I", "X", "Y", "Z"].map(|l| format!("{w}{l}"))).collect();
+        words = words
+            .iter()
+            .flat_map(|w| ["I", "X", "Y", "Z"].map(|l| format!("{w}{l}")))
+            .collect();
     }
     words.remove(0);
     let share = p / words.len() as f64;
     let list: Vec<(&str, f64)> = words.iter().map(|w| (w.as_str(), share)).collect();
-    Channel { text: format!("depolarizing({p})"), ..pauli_channel(&list) }
+    Channel {
+        text: format!("depolarizing({p})"),
+        ..pauli_channel(&list)
+    }
 }
 
 /// A flip about one axis on each qubit.
@@ -113,7 +161,11 @@ pub fn flip(name: &str, p: f64) -> Channel {
         "bit-flip" => "X",
         _ => "Y",
     };
-    Channel { text: format!("{name}({p})"), joint: false, ..pauli_channel(&[(letter, p)]) }
+    Channel {
+        text: format!("{name}({p})"),
+        joint: false,
+        ..pauli_channel(&[(letter, p)])
+    }
 }
 
 fn damping_operators(gamma: f64) -> Vec<Matrix> {
@@ -126,7 +178,11 @@ fn damping_operators(gamma: f64) -> Vec<Matrix> {
 /// Amplitude damping on each qubit.
 pub fn amplitude_damping(gamma: f64) -> Channel {
     let text = format!("amplitude-damping({gamma})");
-    Channel { text, joint: false, operators: damping_operators(gamma) }
+    Channel {
+        text,
+        joint: false,
+        operators: damping_operators(gamma),
+    }
 }
 
 /// Relaxation on each qubit, all times in microseconds. Textbook: coherence
@@ -135,8 +191,15 @@ pub fn relaxation(t1: f64, t2: f64, time: f64) -> Channel {
     let coherence = (-time / t2).exp() / (-time / (2.0 * t1)).exp();
     let dephase = pauli_channel(&[("Z", (1.0 - coherence) / 2.0)]).operators;
     let damp = damping_operators(1.0 - (-time / t1).exp());
-    let operators = dephase.iter().flat_map(|d| damp.iter().map(|k| product(d, k))).collect();
-    Channel { text: format!("relaxation({t1}us, {t2}us, {time}us)"), joint: false, operators }
+    let operators = dephase
+        .iter()
+        .flat_map(|d| damp.iter().map(|k| product(d, k)))
+        .collect();
+    Channel {
+        text: format!("relaxation({t1}us, {t2}us, {time}us)"),
+        joint: false,
+        operators,
+    }
 }
 
 /// Coherent rotation exp(−i·angle·P/2) on each qubit.
@@ -145,10 +208,18 @@ pub fn over_rotation(axis: &str, angle: f64) -> Channel {
     let (s, c) = (angle / 2.0).sin_cos();
     let (identity, generator) = (pauli(b'I'), pauli(letter.as_bytes()[0]));
     let matrix = (0..2)
-        .map(|i| (0..2).map(|j| identity[i][j] * c - complex(0.0, s) * generator[i][j]).collect())
+        .map(|i| {
+            (0..2)
+                .map(|j| identity[i][j] * c - complex(0.0, s) * generator[i][j])
+                .collect()
+        })
         .collect();
     let text = format!("over-rotation({axis}, {angle})");
-    Channel { text, joint: false, operators: vec![matrix] }
+    Channel {
+        text,
+        joint: false,
+        operators: vec![matrix],
+    }
 }
 
 /// A circuit with one qubit register `q` and one bit register `c`.
@@ -166,7 +237,12 @@ impl Circuit {
         let text = format!(
             "OPENQASM 3.0;\ninclude \"stdgates.inc\";\nqubit[{qubits}] q;\nbit[{bits}] c;\n"
         );
-        Circuit { qubits, bits, text, blocks: vec![Vec::new()] }
+        Circuit {
+            qubits,
+            bits,
+            text,
+            blocks: vec![Vec::new()],
+        }
     }
 
     /// The OpenQASM text.
@@ -191,10 +267,16 @@ impl Circuit {
 
     fn apply(&mut self, channel: &Channel, qubits: &[usize]) {
         if channel.joint {
-            self.push(Step::Kraus { qubits: qubits.to_vec(), operators: channel.operators.clone() });
+            self.push(Step::Kraus {
+                qubits: qubits.to_vec(),
+                operators: channel.operators.clone(),
+            });
         } else {
             for &qubit in qubits {
-                self.push(Step::Kraus { qubits: vec![qubit], operators: channel.operators.clone() });
+                self.push(Step::Kraus {
+                    qubits: vec![qubit],
+                    operators: channel.operators.clone(),
+                });
             }
         }
     }
@@ -206,8 +288,11 @@ impl Circuit {
         }
         let listed: Vec<String> = angles.iter().map(f64::to_string).collect();
         let names: Vec<String> = qubits.iter().map(|q| format!("q[{q}]")).collect();
-        let angle_text =
-            if angles.is_empty() { String::new() } else { format!("({})", listed.join(", ")) };
+        let angle_text = if angles.is_empty() {
+            String::new()
+        } else {
+            format!("({})", listed.join(", "))
+        };
         self.line(&format!("{name}{angle_text} {};", names.join(", ")));
         let mut basics = Vec::new();
         expand(name, angles, &mut basics);
@@ -217,11 +302,18 @@ impl Circuit {
                 Basic::Cx(a, b) => {
                     // Bit 0 is the control.
                     let permute = [0, 3, 2, 1];
-                    let row = |i: usize| (0..4).map(move |j| complex(f64::from(permute[i] == j), 0.0));
-                    (vec![qubits[a], qubits[b]], (0..4).map(|i| row(i).collect()).collect())
+                    let row =
+                        |i: usize| (0..4).map(move |j| complex(f64::from(permute[i] == j), 0.0));
+                    (
+                        vec![qubits[a], qubits[b]],
+                        (0..4).map(|i| row(i).collect()).collect(),
+                    )
                 }
             };
-            self.push(Step::Kraus { qubits, operators: vec![operator] });
+            self.push(Step::Kraus {
+                qubits,
+                operators: vec![operator],
+            });
         }
         for channel in noise {
             self.apply(channel, qubits);
@@ -247,14 +339,23 @@ impl Circuit {
     /// Reset to |0⟩.
     pub fn reset(&mut self, qubit: usize) {
         self.line(&format!("reset q[{qubit}];"));
-        let operators = vec![real([[1.0, 0.0], [0.0, 0.0]]), real([[0.0, 1.0], [0.0, 0.0]])];
-        self.push(Step::Kraus { qubits: vec![qubit], operators });
+        let operators = vec![
+            real([[1.0, 0.0], [0.0, 0.0]]),
+            real([[0.0, 1.0], [0.0, 0.0]]),
+        ];
+        self.push(Step::Kraus {
+            qubits: vec![qubit],
+            operators,
+        });
     }
 
     /// A classical assignment.
     pub fn assign(&mut self, bit: usize, text: &str, value: impl Fn(u64) -> bool + 'static) {
         self.line(&format!("c[{bit}] = {text};"));
-        self.push(Step::Assign { bit, value: Box::new(value) });
+        self.push(Step::Assign {
+            bit,
+            value: Box::new(value),
+        });
     }
 
     /// if … else ….
@@ -270,7 +371,11 @@ impl Circuit {
         self.line("} else {");
         let otherwise = self.block(otherwise);
         self.line("}");
-        self.push(Step::If { condition: Box::new(condition), then, otherwise });
+        self.push(Step::If {
+            condition: Box::new(condition),
+            then,
+            otherwise,
+        });
     }
 
     fn block(&mut self, fill: impl FnOnce(&mut Self)) -> Vec<Step> {
@@ -337,11 +442,21 @@ fn run(steps: &[Step], mut branches: Branches) -> Branches {
                         let wrong = flip[usize::from(outcome)];
                         let right = scaled(&projected, 1.0 - wrong);
                         add(&mut next, set(bits, *bit, outcome), right);
-                        add(&mut next, set(bits, *bit, !outcome), scaled(&projected, wrong));
+                        add(
+                            &mut next,
+                            set(bits, *bit, !outcome),
+                            scaled(&projected, wrong),
+                        );
                     }
                 }
-                Step::Assign { bit, value } => add(&mut next, set(bits, *bit, value(bits)), density),
-                Step::If { condition, then, otherwise } => {
+                Step::Assign { bit, value } => {
+                    add(&mut next, set(bits, *bit, value(bits)), density)
+                }
+                Step::If {
+                    condition,
+                    then,
+                    otherwise,
+                } => {
                     let block = if condition(bits) { then } else { otherwise };
                     for (bits, density) in run(block, Branches::from([(bits, density)])) {
                         add(&mut next, bits, density);
@@ -358,7 +473,10 @@ fn project(density: &Matrix, qubit: usize, outcome: bool) -> Matrix {
     let keep = |i: usize| (i >> qubit & 1 == 1) == outcome;
     let kept = |i: usize, j: usize, v: Complex64| if keep(i) && keep(j) { v } else { v * 0.0 };
     let row = |(i, row): (usize, &Vec<Complex64>)| {
-        row.iter().enumerate().map(|(j, &v)| kept(i, j, v)).collect()
+        row.iter()
+            .enumerate()
+            .map(|(j, &v)| kept(i, j, v))
+            .collect()
     };
     density.iter().enumerate().map(row).collect()
 }
@@ -371,12 +489,17 @@ fn sandwich(operator: &Matrix, qubits: &[usize], density: &Matrix) -> Matrix {
 
 fn dagger(matrix: &Matrix) -> Matrix {
     let n = matrix.len();
-    (0..n).map(|i| (0..n).map(|j| matrix[j][i].conj()).collect()).collect()
+    (0..n)
+        .map(|i| (0..n).map(|j| matrix[j][i].conj()).collect())
+        .collect()
 }
 
 fn from_left(operator: &Matrix, qubits: &[usize], density: &Matrix) -> Matrix {
     let inner = |i: usize| {
-        qubits.iter().enumerate().fold(0, |sum, (place, &q)| sum | (i >> q & 1) << place)
+        qubits
+            .iter()
+            .enumerate()
+            .fold(0, |sum, (place, &q)| sum | (i >> q & 1) << place)
     };
     let outer = |i: usize, value: usize| {
         qubits.iter().enumerate().fold(i, |sum, (place, &q)| {

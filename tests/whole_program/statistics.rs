@@ -8,7 +8,11 @@ pub const FALSE_ALARM: f64 = 1e-6;
 
 /// ln Γ of a multiple of 1/2.
 fn ln_gamma_of_half(twice: usize) -> f64 {
-    let mut value = if twice.is_multiple_of(2) { 0.0 } else { std::f64::consts::PI.sqrt().ln() };
+    let mut value = if twice.is_multiple_of(2) {
+        0.0
+    } else {
+        std::f64::consts::PI.sqrt().ln()
+    };
     let mut at = if twice.is_multiple_of(2) { 1.0 } else { 0.5 };
     while 2.0 * at < twice as f64 {
         value += f64::ln(at);
@@ -45,7 +49,10 @@ pub fn upper_tail(x: f64, freedom: usize) -> f64 {
 /// p-value of counts under a law. Bins that expect fewer than 10 are pooled; a
 /// count in a bin of probability zero gives 0.
 pub fn fit_p_value(counts: &[u64], law: &[f64]) -> f64 {
-    assert!((law.iter().sum::<f64>() - 1.0).abs() < 1e-9, "a law sums to 1");
+    assert!(
+        (law.iter().sum::<f64>() - 1.0).abs() < 1e-9,
+        "a law sums to 1"
+    );
     let shots = counts.iter().sum::<u64>() as f64;
     let mut bins: Vec<(f64, f64)> = Vec::new();
     for (&count, &probability) in counts.iter().zip(law) {
@@ -83,7 +90,10 @@ fn published_points() {
         (63, 1e-4, 113.50499285),
     ] {
         let tail = upper_tail(point, freedom);
-        assert!((tail / level - 1.0).abs() < 1e-6, "{freedom}: {tail} for {level}");
+        assert!(
+            (tail / level - 1.0).abs() < 1e-6,
+            "{freedom}: {tail} for {level}"
+        );
     }
 }
 
