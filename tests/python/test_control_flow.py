@@ -247,12 +247,12 @@ measure q -> c;
 
     def test_input_value(self):
         circuit = Circuit()
-        circuit.line("input float angle;")
+        circuit.line("input float turn;")
         q, = circuit.qubits("q")
         c = circuit.bits("c", 1)
-        circuit.gate("rx", q, parameters=(("2 * angle", 1.4),))
+        circuit.gate("rx", q, parameters=(("2 * turn", 1.4),))
         circuit.measure(q, c[0])
-        self.check(circuit, 205, extra=["--set", "angle=0.7"])
+        self.check(circuit, 205, extra=["--set", "turn=0.7"])
 
 
 class Random(Drawn):

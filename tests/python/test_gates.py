@@ -156,7 +156,7 @@ class Modifiers(unittest.TestCase):
         blocks.check(self, 12)
 
 
-DEFINITIONS = """gate half(angle) a { rz(angle / 2) a; sx a; }
+DEFINITIONS = """gate half(turn) a { rz(turn / 2) a; sx a; }
 gate pair(x, y) a, b { half(x) a; cx a, b; inv @ half(y) b; }
 gate nothing a { }
 gate majority a, b, c { cx c, b; cx c, a; ccx a, b, c; }"""
