@@ -5,8 +5,7 @@ use std::path::Path;
 use shottower::report::Summary;
 use shottower::sampler::Rows;
 use shottower::store::{
-    AuditBlock, Finished, Header, Part, RegisterHeader, ShotFile, SiteRow, Writer,
-    WriterOptions,
+    AuditBlock, Finished, Header, Part, RegisterHeader, ShotFile, SiteRow, Writer, WriterOptions,
 };
 
 fn register(name: &str, role: &str, width: usize) -> RegisterHeader {

@@ -4,8 +4,8 @@ use std::path::Path;
 
 use shottower::sampler::{FaultEvent, Rows};
 use shottower::store::{
-    AuditBlock, Family, Finished, Header, LocationRow, Part, RegisterHeader,
-    ShotFile, SiteRow, StoreError, Writer, WriterOptions,
+    AuditBlock, Family, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow,
+    StoreError, Writer, WriterOptions,
 };
 
 const ALL: WriterOptions = WriterOptions {

@@ -45,36 +45,56 @@ pub(super) fn load(reading: &Reading<'_>) -> Result<Input, CommandError> {
     let texts = Texts {
         circuit_name: reading.circuit.display().to_string(),
         circuit: read("circuit", reading.circuit)?,
-        noise_name: reading.noise.map(|path| path.display().to_string()).unwrap_or_default(),
-        noise: reading.noise.map(|path| read("noise", path)).transpose()?.unwrap_or_default(),
+        noise_name: reading
+            .noise
+            .map(|path| path.display().to_string())
+            .unwrap_or_default(),
+        noise: reading
+            .noise
+            .map(|path| read("noise", path))
+            .transpose()?
+            .unwrap_or_default(),
     };
     let mut set = BTreeMap::new();
     for (name, value) in reading.set {
         if set.insert(name.clone(), *value).is_some() {
-            return Err(CommandError::Usage(format!("--set gives {name} two values")));
+            return Err(CommandError::Usage(format!(
+                "--set gives {name} two values"
+            )));
         }
     }
-    let options = ParseOptions { set, max_operations: reading.max_operations };
+    let options = ParseOptions {
+        set,
+        max_operations: reading.max_operations,
+    };
     let circuit = circuit::parse(&texts.circuit_name, &texts.circuit, &options)
         .map_err(|errors| refuse(&texts, &errors))?;
     let noise_file = match reading.noise {
         None => None,
-        Some(_) => {
-            Some(NoiseFile::parse(&texts.noise).map_err(|errors| refuse(&texts, &errors))?)
-        }
+        Some(_) => Some(NoiseFile::parse(&texts.noise).map_err(|errors| refuse(&texts, &errors))?),
     };
-    let noisy = noise::attach(&circuit, noise_file.as_ref())
-        .map_err(|errors| refuse(&texts, &errors))?;
+    let noisy =
+        noise::attach(&circuit, noise_file.as_ref()).map_err(|errors| refuse(&texts, &errors))?;
     for warning in circuit.warnings.iter().chain(&noisy.warnings) {
         message::diagnostic(&texts, warning);
     }
     let qubits = circuit.qubits.len();
-    let schedule =
-        magic::schedule(&noisy, qubits, &ScheduleOptions { absorb: reading.absorb });
+    let schedule = magic::schedule(
+        &noisy,
+        qubits,
+        &ScheduleOptions {
+            absorb: reading.absorb,
+        },
+    );
     drop(noisy);
     let program = Program::compile(schedule, qubits, circuit.bits)?;
     let title = noise_file.and_then(|file| file.title);
-    Ok(Input { texts, circuit, title, program })
+    Ok(Input {
+        texts,
+        circuit,
+        title,
+        program,
+    })
 }
 
 fn read(what: &str, path: &Path) -> Result<String, CommandError> {
@@ -84,7 +104,9 @@ fn read(what: &str, path: &Path) -> Result<String, CommandError> {
     };
     let mut bytes = Vec::new();
     let file = File::open(path).map_err(failed)?;
-    file.take(MAX_BYTES + 1).read_to_end(&mut bytes).map_err(failed)?;
+    file.take(MAX_BYTES + 1)
+        .read_to_end(&mut bytes)
+        .map_err(failed)?;
     if bytes.len() as u64 > MAX_BYTES {
         return Err(CommandError::Usage(format!(
             "{what} file {shown} is longer than 16 MiB, the most that is read"

@@ -44,7 +44,11 @@ pub(super) fn diagnostic(texts: &Texts, diagnostic: &Diagnostic) {
     let mut report = Report::build(kind, (name, start..end))
         .with_config(config)
         .with_message(&diagnostic.message)
-        .with_label(Label::new((name, start..end)).with_color(color).with_message("here"));
+        .with_label(
+            Label::new((name, start..end))
+                .with_color(color)
+                .with_message("here"),
+        );
     if let Some(help) = &diagnostic.help {
         report = report.with_help(help);
     }

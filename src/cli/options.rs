@@ -173,7 +173,11 @@ fn part(text: &str) -> Result<(u64, u64), String> {
     let (index, count) = text.split_once('/').ok_or(expected)?;
     let index: u64 = index.parse().map_err(|_| expected)?;
     let count: u64 = count.parse().map_err(|_| expected)?;
-    if index >= 1 && index <= count { Ok((index, count)) } else { Err(expected.to_owned()) }
+    if index >= 1 && index <= count {
+        Ok((index, count))
+    } else {
+        Err(expected.to_owned())
+    }
 }
 
 fn assignment(text: &str) -> Result<(String, f64), String> {

@@ -38,7 +38,13 @@ impl Shown {
         }
         if !std::io::stderr().is_terminal() {
             let now = Instant::now();
-            return Shown::Lines { what, total, shots: 0, started: now, last: now };
+            return Shown::Lines {
+                what,
+                total,
+                shots: 0,
+                started: now,
+                last: now,
+            };
         }
         let bar = ProgressBar::new(total);
         let template = "{prefix} {wide_bar} {pos}/{len} shots, {per_sec}, {eta} left {msg}";
@@ -46,7 +52,11 @@ impl Shown {
             bar.set_style(style);
         }
         bar.set_prefix(what);
-        Shown::Bar { bar, shots: 0, attempts: 0 }
+        Shown::Bar {
+            bar,
+            shots: 0,
+            attempts: 0,
+        }
     }
 
     /// Takes the bar away.
@@ -61,7 +71,11 @@ impl Progress for Shown {
     fn advance(&mut self, more: u64, tried: u64) {
         match self {
             Shown::Quiet => {}
-            Shown::Bar { bar, shots, attempts } => {
+            Shown::Bar {
+                bar,
+                shots,
+                attempts,
+            } => {
                 *shots += more;
                 *attempts += tried;
                 bar.inc(more);
@@ -70,7 +84,13 @@ impl Progress for Shown {
                     bar.set_message(format!("({:.0} % accepted)", 100.0 * rate));
                 }
             }
-            Shown::Lines { what, total, shots, started, last } => {
+            Shown::Lines {
+                what,
+                total,
+                shots,
+                started,
+                last,
+            } => {
                 *shots += more;
                 if last.elapsed() < LINE_EVERY || *shots == 0 {
                     return;

@@ -11,8 +11,8 @@ use crate::readout::probe::{Probe, Settings};
 use crate::report::Summary;
 use crate::sampler::{Block, Drawing, Family, Interrupt, Sampler};
 use crate::store::{
-    AuditBlock, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError, Writer,
-    WriterOptions,
+    AuditBlock, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError,
+    Writer, WriterOptions,
 };
 
 use super::input::{self, Input, Reading};
@@ -25,7 +25,9 @@ static INTERRUPT: Interrupt = Interrupt::new();
 /// Draws shots of a circuit into a result file.
 pub(super) fn run(options: &Run) -> Result<(), CommandError> {
     if options.out.exists() && !options.force {
-        return Err(CommandError::Output(StoreError::Exists { path: options.out.clone() }));
+        return Err(CommandError::Output(StoreError::Exists {
+            path: options.out.clone(),
+        }));
     }
     let input = input::load(&Reading {
         circuit: &options.circuit,
@@ -102,22 +104,40 @@ impl<'a> Plan<'a> {
                     .to_owned(),
             ));
         }
-        let part = options.part.map_or(Part::default(), |(index, count)| Part { index, count });
-        let registers: Vec<&BitRegister> =
-            input.circuit.registers.iter().filter(|register| register.recorded).collect();
+        let part = options
+            .part
+            .map_or(Part::default(), |(index, count)| Part { index, count });
+        let registers: Vec<&BitRegister> = input
+            .circuit
+            .registers
+            .iter()
+            .filter(|register| register.recorded)
+            .collect();
         let recorded = registers
             .iter()
             .flat_map(|register| register.first..register.first + register.width)
             .map(|bit| bit as u32)
             .collect();
-        let mut settings = vec![
-            ("absorb".to_owned(), if options.absorb == Switch::On { "on" } else { "off" }.to_owned()),
-        ];
-        settings.extend(options.set.iter().map(|(name, value)| (format!("set {name}"), value.to_string())));
+        let mut settings = vec![(
+            "absorb".to_owned(),
+            if options.absorb == Switch::On {
+                "on"
+            } else {
+                "off"
+            }
+            .to_owned(),
+        )];
+        settings.extend(
+            options
+                .set
+                .iter()
+                .map(|(name, value)| (format!("set {name}"), value.to_string())),
+        );
         if let Some(probe) = choice.probe {
             settings.push(("probes".to_owned(), probe.probes.to_string()));
         }
         let texts = &input.texts;
+        let places = Places::new(input);
         let header = Header {
             circuit_name: texts.circuit_name.clone(),
             circuit: texts.circuit.clone(),
@@ -142,8 +162,12 @@ impl<'a> Plan<'a> {
                     width: register.width,
                 })
                 .collect(),
-            sites: site_rows(input),
-            locations: location_rows(input),
+            sites: places.sites(),
+            locations: if options.faults {
+                places.locations()
+            } else {
+                Vec::new()
+            },
         };
         Ok(Plan {
             input,
@@ -185,17 +209,24 @@ impl<'a> Plan<'a> {
             return Ok(());
         }
         let sparsifier = Sparsifier::new(program.sites());
-        let single = Settings { probes: 1, cap: 1.0 };
+        let single = Settings {
+            probes: 1,
+            cap: 1.0,
+        };
         let write = |block: &Block| Ok(writer.append_companion(&block.rows)?);
         let mut progress = Shown::new("companion", self.companion_count(), options.quiet);
         let sampler = self.sampler(program, &sparsifier, MAX_SLOTS, false, Drawing::Companion);
-        with_probe(program, single, Sample {
-            sampler: &sampler,
-            family: Family::Companion,
-            range: self.companion.clone(),
-            progress: &mut progress,
-            sink: write,
-        })?;
+        with_probe(
+            program,
+            single,
+            Sample {
+                sampler: &sampler,
+                family: Family::Companion,
+                range: self.companion.clone(),
+                progress: &mut progress,
+                sink: write,
+            },
+        )?;
         progress.finish();
         Ok(())
     }
@@ -213,7 +244,15 @@ impl<'a> Plan<'a> {
         drawing: Drawing,
     ) -> Sampler<'p> {
         let recorded = self.recorded.clone();
-        Sampler::new(program, sparsifier, recorded, self.seed, room, keep_events, drawing)
+        Sampler::new(
+            program,
+            sparsifier,
+            recorded,
+            self.seed,
+            room,
+            keep_events,
+            drawing,
+        )
     }
 
     fn draw_shots(
@@ -225,7 +264,11 @@ impl<'a> Plan<'a> {
         let sparsifier = Sparsifier::new(program.sites());
         let mut clipped = 0;
         let write = |block: &Block| -> Result<(), CommandError> {
-            clipped += block.audit.iter().filter(|shot| shot.register.clipped).count() as u64;
+            clipped += block
+                .audit
+                .iter()
+                .filter(|shot| shot.register.clipped)
+                .count() as u64;
             writer.append_shots(&block.rows)?;
             writer.append_audit(&AuditBlock::new(&block.audit))?;
             if options.faults {
@@ -284,7 +327,14 @@ struct Sample<'a, 'p, S> {
 
 impl<S: FnMut(&Block) -> Result<(), CommandError>> Sample<'_, '_, S> {
     fn with<R: Register + Send>(self, make: impl Fn() -> R + Sync) -> Result<u64, CommandError> {
-        self.sampler.sample(self.family, self.range, make, &INTERRUPT, self.progress, self.sink)
+        self.sampler.sample(
+            self.family,
+            self.range,
+            make,
+            &INTERRUPT,
+            self.progress,
+            self.sink,
+        )
     }
 }
 
@@ -302,46 +352,65 @@ fn with_probe<S: FnMut(&Block) -> Result<(), CommandError>>(
     }
 }
 
-fn site_rows(input: &Input) -> Vec<SiteRow> {
-    let row = |(site, kept): (&Site, bool)| SiteRow {
-        line: line(input, site.operation),
-        qubits: names(input, &site.qubits),
-        kind: match site.kind {
-            SiteKind::Rotation(_) => "rotation",
-            SiteKind::Ccz(_) => "ccz",
-            SiteKind::Prepared(_) => "prepared",
-        }
-        .to_owned(),
-        extent_without_noise: site.extent_without_noise,
-        extent: site.extent,
-        members: match &site.kind {
-            SiteKind::Rotation(rotation) => rotation.members.len(),
-            SiteKind::Ccz(_) => 1,
-            SiteKind::Prepared(prepared) => prepared.members.len(),
-        } as u32,
-        kept,
-    };
-    input.program.all_sites().map(row).collect()
+/// Names and lines for the tables of a result file.
+struct Places<'a> {
+    input: &'a Input,
+    /// Offsets of all line ends of the circuit text.
+    line_ends: Vec<u32>,
 }
 
-fn location_rows(input: &Input) -> Vec<LocationRow> {
-    let row = |location: &Location| LocationRow {
-        line: line(input, location.operation),
-        kind: location.kind.word().to_owned(),
-        qubits: names(input, &location.qubits),
-        probability: location.probability,
-    };
-    input.program.locations().iter().map(row).collect()
-}
+impl<'a> Places<'a> {
+    fn new(input: &'a Input) -> Self {
+        let bytes = input.circuit.source.bytes().enumerate();
+        let line_ends = bytes
+            .filter(|&(_, byte)| byte == b'\n')
+            .map(|(offset, _)| offset as u32)
+            .collect();
+        Places { input, line_ends }
+    }
 
-fn line(input: &Input, operation: u32) -> u32 {
-    let span = input.circuit.operations[operation as usize].span;
-    span.line_and_column(&input.circuit.source).0 as u32
-}
+    /// Line of an operation, from 1.
+    fn line(&self, operation: u32) -> u32 {
+        let start = self.input.circuit.operations[operation as usize].span.start;
+        self.line_ends.partition_point(|&end| end < start) as u32 + 1
+    }
 
-fn names(input: &Input, qubits: &[u32]) -> String {
-    let name = |&qubit: &u32| input.circuit.qubits[qubit as usize].as_str();
-    qubits.iter().map(name).collect::<Vec<_>>().join(", ")
+    fn names(&self, qubits: &[u32]) -> String {
+        let name = |&qubit: &u32| self.input.circuit.qubits[qubit as usize].as_str();
+        qubits.iter().map(name).collect::<Vec<_>>().join(", ")
+    }
+
+    fn sites(&self) -> Vec<SiteRow> {
+        let row = |(site, kept): (&Site, bool)| SiteRow {
+            line: self.line(site.operation),
+            qubits: self.names(&site.qubits),
+            kind: match site.kind {
+                SiteKind::Rotation(_) => "rotation",
+                SiteKind::Ccz(_) => "ccz",
+                SiteKind::Prepared(_) => "prepared",
+            }
+            .to_owned(),
+            extent_without_noise: site.extent_without_noise,
+            extent: site.extent,
+            members: match &site.kind {
+                SiteKind::Rotation(rotation) => rotation.members.len(),
+                SiteKind::Ccz(_) => 1,
+                SiteKind::Prepared(prepared) => prepared.members.len(),
+            } as u32,
+            kept,
+        };
+        self.input.program.all_sites().map(row).collect()
+    }
+
+    fn locations(&self) -> Vec<LocationRow> {
+        let row = |location: &Location| LocationRow {
+            line: self.line(location.operation),
+            kind: location.kind.word().to_owned(),
+            qubits: self.names(&location.qubits),
+            probability: location.probability,
+        };
+        self.input.program.locations().iter().map(row).collect()
+    }
 }
 
 /// Sets up the thread pool; says how many threads there are.
@@ -371,10 +440,13 @@ fn catch_interrupts() -> Result<(), CommandError> {
 /// Bytes of memory that may be used: nine tenths of what the system says is
 /// available, or no limit where it does not say.
 fn available_memory() -> u64 {
-    let said = std::fs::read_to_string("/proc/meminfo").ok().and_then(|text| {
-        let line = text.lines().find(|line| line.starts_with("MemAvailable:"))?;
-        line.split_whitespace().nth(1)?.parse::<u64>().ok()
-    });
+    let said = std::fs::read_to_string("/proc/meminfo")
+        .ok()
+        .and_then(|text| {
+            let line = text
+                .lines()
+                .find(|line| line.starts_with("MemAvailable:"))?;
+            line.split_whitespace().nth(1)?.parse::<u64>().ok()
+        });
     said.map_or(u64::MAX, |kibibytes| kibibytes * 1024 / 10 * 9)
 }
-

@@ -16,6 +16,10 @@ pub(super) fn show(options: &Show) -> Result<(), CommandError> {
 /// Prints a summary on stdout. A closed pipe is no error.
 pub(super) fn print(summary: &Summary, json: bool) {
     use std::io::Write;
-    let text = if json { summary.to_json() } else { summary.to_string() };
+    let text = if json {
+        summary.to_json()
+    } else {
+        summary.to_string()
+    };
     let _ = writeln!(std::io::stdout(), "{}", text.trim_end());
 }

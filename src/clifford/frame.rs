@@ -294,3 +294,6 @@ impl Frame {
             .collect()
     }
 }
+
+#[cfg(test)]
+mod tests;

@@ -9,7 +9,7 @@ use crate::circuit::{Clifford, Pauli, PauliProduct, Qubits};
 use crate::clifford::frame::Frame;
 use crate::clifford::pauli::{ones, toggle, words_for};
 use crate::magic::{Instruction, Kind, Schedule, SiteKind};
-use crate::noise::{PauliChannel, ReadoutFlip};
+use crate::noise::{PauliChannel, PauliChoices, PauliWord, ReadoutFlip};
 
 use super::axis::{Gathered, ones_and};
 use super::faults::{ChoiceTable, FaultGroup, FaultPlace};
@@ -47,7 +47,8 @@ pub(super) struct Compiler<'a> {
     triggers: u32,
     places: Vec<(u32, Arc<ChoiceTable>)>,
     unconditional: Vec<u32>,
-    tables: HashMap<u32, Arc<ChoiceTable>>,
+    /// Tables shared by equal channels.
+    tables: HashMap<TableKey, Arc<ChoiceTable>>,
     /// Sites met, and those of them with a step.
     met: Vec<u32>,
     stepped: Vec<bool>,
@@ -75,7 +76,22 @@ pub(super) fn segment(
         compiler.operation = instruction.operation;
         compiler.instruction(index, instruction, condition)?;
     }
-    Ok(compiler.finish())
+    compiler.finish()
+}
+
+/// What makes two channels' tables equal: the number of qubits, and words with
+/// the bits of their probabilities.
+type TableKey = (usize, Vec<(PauliWord, u64)>);
+
+fn table_key(channel: &PauliChannel) -> TableKey {
+    let list = match &channel.choices {
+        PauliChoices::Uniform(chance) => vec![(PauliWord::default(), chance.to_bits())],
+        PauliChoices::Listed(list) => list
+            .iter()
+            .map(|&(word, chance)| (word, chance.to_bits()))
+            .collect(),
+    };
+    (channel.qubits.len(), list)
 }
 
 /// Whether the steps that follow depend on whether this happens.
@@ -461,7 +477,7 @@ impl<'a> Compiler<'a> {
         let location = self.context.location_of[&index];
         let table = self
             .tables
-            .entry(location)
+            .entry(table_key(channel))
             .or_insert_with(|| Arc::new(ChoiceTable::new(channel)))
             .clone();
         let place = self.place(location, table, channel.qubits.clone());
@@ -518,7 +534,7 @@ impl<'a> Compiler<'a> {
         }));
     }
 
-    fn finish(self) -> (Segment, Vec<bool>) {
+    fn finish(self) -> Result<(Segment, Vec<bool>), CompileError> {
         let exit = self.end.is_some().then_some(self.reference.len() as u32);
         let flips = flips::backward(
             self.frame.qubits(),
@@ -527,7 +543,10 @@ impl<'a> Compiler<'a> {
             self.triggers as usize,
             self.places.len(),
             exit,
-        );
+        )
+        .ok_or(CompileError::TooManyFlips {
+            places: self.places.len(),
+        })?;
         let mut steps = self.steps;
         for step in &mut steps {
             if let Some(set) = step.flips_mut() {
@@ -562,6 +581,6 @@ impl<'a> Compiler<'a> {
             peak_active: self.peak_active,
             end: self.end.map_or(End::Finished, End::Branch),
         };
-        (segment, idle)
+        Ok((segment, idle))
     }
 }

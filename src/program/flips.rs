@@ -30,48 +30,82 @@ impl SetId {
     }
 }
 
-/// Stored sets, packed.
+/// Most bytes the sets of one segment may take.
+const MAX_BYTES: usize = 4 << 30;
+
+/// Stored sets, packed: short ones as lists of members, long ones as bit
+/// vectors, whichever takes less room.
 #[derive(Debug, Clone)]
 pub struct SetArena {
-    offsets: Vec<u32>,
+    /// Words of a bit vector over all members there can be.
+    words: usize,
+    sets: Vec<Stored>,
     items: Vec<u32>,
+    bits: Vec<u64>,
 }
 
-impl Default for SetArena {
-    fn default() -> Self {
-        SetArena {
-            offsets: vec![0, 0],
-            items: Vec::new(),
-        }
-    }
+/// Where a set is.
+#[derive(Debug, Clone, Copy)]
+enum Stored {
+    /// From here, so many, in `items`.
+    Items(usize, u32),
+    /// From here in `bits`.
+    Bits(usize),
 }
 
 impl SetArena {
+    /// An arena for sets of numbers below `size`. Holds the empty set.
+    pub fn new(size: usize) -> Self {
+        SetArena {
+            words: size.div_ceil(64),
+            sets: vec![Stored::Items(0, 0)],
+            items: Vec::new(),
+            bits: Vec::new(),
+        }
+    }
+
     /// Stores a set.
     pub fn store(&mut self, items: &[u32]) -> SetId {
         if items.is_empty() {
             return SetId::EMPTY;
         }
-        self.items.extend_from_slice(items);
-        self.offsets.push(self.items.len() as u32);
-        SetId(self.offsets.len() as u32 - 2)
+        if items.len() > 2 * self.words {
+            let start = self.bits.len();
+            self.bits.resize(start + self.words, 0);
+            for &item in items {
+                self.bits[start + item as usize / 64] ^= 1 << (item % 64);
+            }
+            self.sets.push(Stored::Bits(start));
+        } else {
+            self.sets
+                .push(Stored::Items(self.items.len(), items.len() as u32));
+            self.items.extend_from_slice(items);
+        }
+        SetId(self.sets.len() as u32 - 1)
     }
 
-    /// The members of a set.
+    /// Toggles the members of a set.
     #[inline]
-    pub fn get(&self, id: SetId) -> &[u32] {
-        let index = id.0 as usize;
-        &self.items[self.offsets[index] as usize..self.offsets[index + 1] as usize]
+    pub fn toggle(&self, id: SetId, flips: &mut [u64]) {
+        match self.sets[id.0 as usize] {
+            Stored::Items(start, count) => {
+                for &item in &self.items[start..start + count as usize] {
+                    flips[item as usize / 64] ^= 1 << (item % 64);
+                }
+            }
+            Stored::Bits(start) => {
+                let bits = &self.bits[start..start + self.words];
+                flips
+                    .iter_mut()
+                    .zip(bits)
+                    .for_each(|(flips, bits)| *flips ^= bits);
+            }
+        }
     }
 
-    /// Total number of stored members.
-    pub fn len(&self) -> usize {
-        self.items.len()
-    }
-
-    /// Whether nothing is stored.
-    pub fn is_empty(&self) -> bool {
-        self.items.is_empty()
+    /// Bytes the sets take.
+    pub fn bytes(&self) -> usize {
+        4 * self.items.len() + 8 * self.bits.len() + size_of::<Stored>() * self.sets.len()
     }
 }
 
@@ -199,7 +233,8 @@ const Z: usize = 1;
 
 /// Runs the backward pass. `previous[t]` is the reading that t is relative to;
 /// `exit` is the number of readings if the Pauli at the end is wanted: then
-/// X_q at the end flips `exit + 2q` and Z_q flips `exit + 2q + 1`.
+/// X_q at the end flips `exit + 2q` and Z_q flips `exit + 2q + 1`. None if the
+/// sets would take too much memory.
 pub(super) fn backward(
     qubits: usize,
     events: &[Event],
@@ -207,7 +242,7 @@ pub(super) fn backward(
     triggers: usize,
     places: usize,
     exit: Option<u32>,
-) -> Flips {
+) -> Option<Flips> {
     let mut children: Vec<Vec<u32>> = vec![Vec::new(); previous.len()];
     for (reading, previous) in previous.iter().enumerate() {
         if let Some(previous) = previous {
@@ -227,12 +262,15 @@ pub(super) fn backward(
         }
     }
     let mut flips = Flips {
-        sets: SetArena::default(),
+        sets: SetArena::new(previous.len() + exit.map_or(0, |_| 2 * qubits)),
         triggers: vec![SetId::EMPTY; triggers],
         places: vec![Vec::new(); places],
         entry: Vec::new(),
     };
     for event in events.iter().rev() {
+        if flips.sets.bytes() > MAX_BYTES {
+            return None;
+        }
         match event {
             Event::Gate(gate) => walk.gate(gate),
             Event::Read(product, reading) => {
@@ -260,5 +298,48 @@ pub(super) fn backward(
         let entry = [flips.sets.store(x), flips.sets.store(z)];
         flips.entry.push(entry);
     }
-    flips
+    Some(flips)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Long sets are stored as bits, short ones as lists; both toggle the same.
+    #[test]
+    fn sets_toggle_their_members_however_they_are_stored() {
+        let mut arena = SetArena::new(200);
+        let short: Vec<u32> = vec![0, 63, 64, 199];
+        let long: Vec<u32> = (0..200).filter(|item| item % 3 == 0).collect();
+        for items in [&short, &long, &Vec::new()] {
+            let id = arena.store(items);
+            let mut flips = vec![0u64; 4];
+            arena.toggle(id, &mut flips);
+            let found: Vec<u32> = (0..200)
+                .filter(|&item| flips[item as usize / 64] >> (item % 64) & 1 == 1)
+                .collect();
+            assert_eq!(&found, items);
+            arena.toggle(id, &mut flips);
+            assert_eq!(flips, [0; 4]);
+        }
+        assert!(matches!(arena.sets[1], Stored::Items(..)));
+        assert!(matches!(arena.sets[2], Stored::Bits(_)));
+    }
+
+    /// Repeated readings of one Pauli keep the sets of early faults short: the
+    /// ancilla's reading of round t is stored relative to round t − 2 (its
+    /// column alternates), so a fault before all of 50 rounds toggles two.
+    #[test]
+    fn relative_readings_keep_sets_flat() {
+        let axis: PauliProduct = smallvec::smallvec![(0, crate::circuit::Pauli::Z)];
+        let events: Vec<Event> = std::iter::once(Event::Place(0, smallvec::smallvec![0]))
+            .chain((0..50).map(|reading| Event::Read(axis.clone(), reading)))
+            .collect();
+        let previous: Vec<Option<u32>> =
+            (0..50).map(|reading: u32| reading.checked_sub(2)).collect();
+        let flips = backward(1, &events, &previous, 0, 1, None).expect("small");
+        let mut toggled = vec![0u64];
+        flips.sets.toggle(flips.places[0][0][0], &mut toggled);
+        assert_eq!(toggled, [0b11]);
+    }
 }

@@ -48,6 +48,15 @@ pub enum CompileError {
         /// Index of the circuit operation.
         operation: u32,
     },
+    /// The flip sets take too much memory.
+    #[error(
+        "which measurements each of the {places} noisy places can flip takes more than 4 GiB to \
+         store: leave noise out where it does not matter, or split the circuit"
+    )]
+    TooManyFlips {
+        /// Number of places where a fault may fire.
+        places: usize,
+    },
 }
 
 /// A compiled circuit.

@@ -132,7 +132,11 @@ pub fn bytes(count: u128) -> String {
         value /= 1024.0;
         unit += 1;
     }
-    if unit == 0 { format!("{count} B") } else { format!("{value:.1} {}", units[unit]) }
+    if unit == 0 {
+        format!("{count} B")
+    } else {
+        format!("{value:.1} {}", units[unit])
+    }
 }
 
 /// Chooses a read-out for a program.
@@ -145,7 +149,11 @@ pub fn choose(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choice,
             let probe = probe_choice(program, log_extent, wish);
             match (dense, probe) {
                 (Ok(dense), Ok(probe)) => {
-                    Ok(if dense_cost(program) <= probe_cost(program, &probe) { dense } else { probe })
+                    Ok(if dense_cost(program) <= probe_cost(program, &probe) {
+                        dense
+                    } else {
+                        probe
+                    })
                 }
                 (Ok(dense), Err(_)) => Ok(dense),
                 (Err(_), Ok(probe)) => Ok(probe),
@@ -194,7 +202,9 @@ fn dense_choice(program: &Program, wish: &Wish) -> Result<Choice, ChoiceError> {
 
 fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choice, ChoiceError> {
     if program.has_damping() {
-        return Err(ChoiceError::Damping { active: program.peak_active() });
+        return Err(ChoiceError::Damping {
+            active: program.peak_active(),
+        });
     }
     // Terms and random states cost k·L with k ∝ 1/δ_mixing and L ∝ 1/δ_probe:
     // least at equal halves. Without magic there is one term and no estimate.
@@ -212,12 +222,14 @@ fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choic
     let slots = program.slots();
     let needed = term_memory(slots) * u128::from(terms) * wish.threads as u128;
     if needed > u128::from(wish.memory) {
-        let fitting =
-            u128::from(wish.memory) / (term_memory(slots) * wish.threads as u128).max(1);
+        let fitting = u128::from(wish.memory) / (term_memory(slots) * wish.threads as u128).max(1);
         let fitting = (fitting as u64).max(1);
         let delta = 4.0 * mixing_weight(log_extent, fitting);
         let advice = if delta < 2.0 {
-            format!("--delta {:.2e} (or --terms {fitting}) would fit", delta * 1.01)
+            format!(
+                "--delta {:.2e} (or --terms {fitting}) would fit",
+                delta * 1.01
+            )
         } else {
             "no useful δ fits: use fewer or noisier non-Clifford gates".to_owned()
         };
@@ -256,11 +268,17 @@ fn dense_cost(program: &Program) -> f64 {
 
 /// Rough nanoseconds a shot.
 fn probe_cost(program: &Program, choice: &Choice) -> f64 {
-    let (Some(terms), Some(settings)) = (choice.terms, choice.probe) else { return f64::INFINITY };
+    let (Some(terms), Some(settings)) = (choice.terms, choice.probe) else {
+        return f64::INFINITY;
+    };
     let active = program.peak_active() as f64;
     let steps = register_steps(program) as f64;
     let estimates = program.inner_measurements() as f64 * settings.probes as f64;
-    let one = if terms == 1 { 0.0 } else { estimates * (50.0 + 2.0 * active * active) };
+    let one = if terms == 1 {
+        0.0
+    } else {
+        estimates * (50.0 + 2.0 * active * active)
+    };
     terms as f64 * (steps * (20.0 + 5.0 * active) + one)
 }
 

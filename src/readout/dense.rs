@@ -43,7 +43,12 @@ impl<'p> Dense<'p> {
         debug_assert!(active <= MAX_ACTIVE);
         let mut amplitudes = Vec::with_capacity(1 << active);
         amplitudes.push(Complex64::ONE);
-        Dense { sites, amplitudes, order: Vec::with_capacity(active), position: [0; MAX_SLOTS] }
+        Dense {
+            sites,
+            amplitudes,
+            order: Vec::with_capacity(active),
+            position: [0; MAX_SLOTS],
+        }
     }
 
     /// The amplitudes; bit p of an index belongs to slot `slots()[p]`.
@@ -90,7 +95,9 @@ impl<'p> Dense<'p> {
         let mask = self.mask(slot);
         let offset = if flipped { 0 } else { mask };
         for block in self.amplitudes.chunks_exact_mut(2 * mask) {
-            block[offset..offset + mask].iter_mut().for_each(|amplitude| *amplitude *= one);
+            block[offset..offset + mask]
+                .iter_mut()
+                .for_each(|amplitude| *amplitude *= one);
         }
     }
 
@@ -148,7 +155,9 @@ impl Register for Dense<'_> {
     }
 
     fn prepare(&mut self, slot: u16, site: u32, draw: &Draw) {
-        let SiteKind::Prepared(prepared) = &self.sites[site as usize].kind else { return };
+        let SiteKind::Prepared(prepared) = &self.sites[site as usize].kind else {
+            return;
+        };
         let [zero, one] = prepared.members[draw.member(site)].state;
         self.join(slot, zero, one);
     }
@@ -187,7 +196,9 @@ impl Register for Dense<'_> {
     }
 
     fn rotate(&mut self, slot: u16, site: u32, flipped: bool, draw: &Draw) {
-        let SiteKind::Rotation(rotation) = &self.sites[site as usize].kind else { return };
+        let SiteKind::Rotation(rotation) = &self.sites[site as usize].kind else {
+            return;
+        };
         let angle = rotation.members[draw.member(site)].angle;
         self.phase(slot, flipped, Complex64::cis(angle));
     }
@@ -225,11 +236,22 @@ impl Register for Dense<'_> {
 
     fn damp(&mut self, slot: u16, flipped: bool, gamma: f64, rng: &mut ShotRng) -> Option<bool> {
         let weights = self.weights(slot);
-        let (zero, one) = (weights[usize::from(flipped)], weights[usize::from(!flipped)]);
+        let (zero, one) = (
+            weights[usize::from(flipped)],
+            weights[usize::from(!flipped)],
+        );
         let decayed = rng.random::<f64>() * (zero + one) < gamma * one;
-        let kept = if decayed { one } else { zero + (1.0 - gamma) * one };
+        let kept = if decayed {
+            one
+        } else {
+            zero + (1.0 - gamma) * one
+        };
         let scale = kept.sqrt().recip();
-        let (zero, one) = if decayed { (0.0, 1.0) } else { (1.0, (1.0 - gamma).sqrt()) };
+        let (zero, one) = if decayed {
+            (0.0, 1.0)
+        } else {
+            (1.0, (1.0 - gamma).sqrt())
+        };
         self.phase(slot, !flipped, Complex64::new(zero * scale, 0.0));
         self.phase(slot, flipped, Complex64::new(one * scale, 0.0));
         Some(decayed)

@@ -192,7 +192,9 @@ impl<const W: usize> Register for Probe<'_, W> {
     }
 
     fn prepare(&mut self, slot: u16, site: u32, draw: &Draw) {
-        let SiteKind::Prepared(prepared) = &self.sites[site as usize].kind else { return };
+        let SiteKind::Prepared(prepared) = &self.sites[site as usize].kind else {
+            return;
+        };
         self.set_active(slot);
         let member = &prepared.members[draw.member(site)];
         let components = draw.row(site as usize);
@@ -202,28 +204,34 @@ impl<const W: usize> Register for Probe<'_, W> {
     }
 
     fn primitive(&mut self, primitive: &Primitive) {
-        self.terms.primitive(primitive.phase, &wide(&primitive.x), &wide(&primitive.z));
+        self.terms
+            .primitive(primitive.phase, &wide(&primitive.x), &wide(&primitive.z));
     }
 
     fn controlled_not(&mut self, control: u16, target: u16) {
-        self.terms.controlled_not(usize::from(control), usize::from(target));
+        self.terms
+            .controlled_not(usize::from(control), usize::from(target));
     }
 
     fn rotate(&mut self, slot: u16, site: u32, flipped: bool, draw: &Draw) {
         let components = draw.row(site as usize);
         if !flipped {
-            self.terms.diagonal(usize::from(slot), |label| components[label as usize]);
+            self.terms
+                .diagonal(usize::from(slot), |label| components[label as usize]);
             return;
         }
         // diag(1, i^b) on x⊕1 is i^b·diag(1, i^−b).
-        self.terms.diagonal(usize::from(slot), |label| (4 - components[label as usize]) & 3);
+        self.terms.diagonal(usize::from(slot), |label| {
+            (4 - components[label as usize]) & 3
+        });
         const POWERS: [Complex64; 4] = [
             Complex64::new(1.0, 0.0),
             Complex64::new(0.0, 1.0),
             Complex64::new(-1.0, 0.0),
             Complex64::new(0.0, -1.0),
         ];
-        self.terms.scale(|label| POWERS[usize::from(components[label as usize])]);
+        self.terms
+            .scale(|label| POWERS[usize::from(components[label as usize])]);
     }
 
     fn quarter_turn(&mut self, slot: u16, flipped: bool) {
@@ -243,7 +251,11 @@ impl<const W: usize> Register for Probe<'_, W> {
 
     fn controlled_z(&mut self, a: u16, b: u16) {
         let (a, b) = (usize::from(a), usize::from(b));
-        let phase = QuadraticPhase { z: [false; 3], cz: [true, false, false], negative: false };
+        let phase = QuadraticPhase {
+            z: [false; 3],
+            cz: [true, false, false],
+            negative: false,
+        };
         self.terms.quadratic([a, b, b], |_| phase);
     }
 
@@ -262,11 +274,20 @@ impl<const W: usize> Register for Probe<'_, W> {
         Some(value)
     }
 
-    fn damp(&mut self, _slot: u16, _flipped: bool, _gamma: f64, _rng: &mut ShotRng) -> Option<bool> {
+    fn damp(
+        &mut self,
+        _slot: u16,
+        _flipped: bool,
+        _gamma: f64,
+        _rng: &mut ShotRng,
+    ) -> Option<bool> {
         unreachable!("circuits with damping of entangled qubits are given to another register")
     }
 
     fn diagnostics(&self) -> Diagnostics {
-        Diagnostics { terms_left: self.terms.len() as u32, ..self.diagnostics }
+        Diagnostics {
+            terms_left: self.terms.len() as u32,
+            ..self.diagnostics
+        }
     }
 }

@@ -48,7 +48,11 @@ impl Rows {
     /// Zeros for `shots` rows of `bits` bits.
     pub fn zeros(shots: usize, bits: usize) -> Self {
         let words = bits.div_ceil(64);
-        Rows { shots, words, bits: vec![0; shots * words] }
+        Rows {
+            shots,
+            words,
+            bits: vec![0; shots * words],
+        }
     }
 
     /// Bit `bit` of row `shot`.
@@ -103,7 +107,15 @@ impl<'p> Sampler<'p> {
         keep_events: bool,
         drawing: Drawing,
     ) -> Self {
-        Sampler { program, sparsifier, recorded, seed, room, keep_events, drawing }
+        Sampler {
+            program,
+            sparsifier,
+            recorded,
+            seed,
+            room,
+            keep_events,
+            drawing,
+        }
     }
 
     /// 64-bit words a shot in a block.
@@ -145,8 +157,7 @@ impl<'p> Sampler<'p> {
                     let mut worker = taken.unwrap_or_else(|| self.worker(make()));
                     let shots = size.min(range.end - first);
                     let asked = first..first + shots;
-                    let block =
-                        self.block(family, asked, range.start, &mut worker, interrupt);
+                    let block = self.block(family, asked, range.start, &mut worker, interrupt);
                     lock(&pool).push(worker);
                     block
                 })
@@ -154,7 +165,11 @@ impl<'p> Sampler<'p> {
             let mut done = 0;
             for (block, &first) in blocks.into_iter().zip(&starts) {
                 let block = block?;
-                let attempts = block.audit.iter().map(|shot| u64::from(shot.attempts)).sum();
+                let attempts = block
+                    .audit
+                    .iter()
+                    .map(|shot| u64::from(shot.attempts))
+                    .sum();
                 sink(&block)?;
                 done += block.rows.shots as u64;
                 progress.advance(block.rows.shots as u64, attempts);
@@ -188,8 +203,15 @@ impl<'p> Sampler<'p> {
         worker: &mut Worker<'p, R>,
         interrupt: &Interrupt,
     ) -> Result<Block, SampleError> {
-        let rows = Rows { words: self.words(), ..Rows::default() };
-        let mut block = Block { first: asked.start, rows, ..Block::default() };
+        let rows = Rows {
+            words: self.words(),
+            ..Rows::default()
+        };
+        let mut block = Block {
+            first: asked.start,
+            rows,
+            ..Block::default()
+        };
         for index in asked {
             if interrupt.raised() {
                 break;
@@ -212,7 +234,11 @@ impl<'p> Sampler<'p> {
         interrupt: &Interrupt,
     ) -> Result<Option<ShotAudit>, SampleError> {
         let mut rng = random::generator(self.seed, family, index);
-        let Worker { machine, register, draw } = worker;
+        let Worker {
+            machine,
+            register,
+            draw,
+        } = worker;
         for attempts in 1..=MAX_ATTEMPTS {
             match self.drawing {
                 Drawing::Members => self.sparsifier.draw_members(&mut rng, draw),
@@ -233,7 +259,10 @@ impl<'p> Sampler<'p> {
                 return Ok(None);
             }
         }
-        Err(SampleError::NeverAccepted { shot: index, attempts: MAX_ATTEMPTS })
+        Err(SampleError::NeverAccepted {
+            shot: index,
+            attempts: MAX_ATTEMPTS,
+        })
     }
 
     /// Appends a finished shot to a block.
@@ -250,7 +279,11 @@ impl<'p> Sampler<'p> {
             machine
                 .events()
                 .iter()
-                .map(|&(location, pauli)| FaultEvent { shot, location, pauli }),
+                .map(|&(location, pauli)| FaultEvent {
+                    shot,
+                    location,
+                    pauli,
+                }),
         );
         block.audit.push(audit);
         *shots += 1;
@@ -258,5 +291,7 @@ impl<'p> Sampler<'p> {
 }
 
 fn lock<T>(mutex: &Mutex<T>) -> std::sync::MutexGuard<'_, T> {
-    mutex.lock().unwrap_or_else(|poisoned| poisoned.into_inner())
+    mutex
+        .lock()
+        .unwrap_or_else(|poisoned| poisoned.into_inner())
 }

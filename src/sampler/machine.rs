@@ -132,7 +132,10 @@ impl<'p> Machine<'p> {
             .iter()
             .enumerate()
             .map(|(qubit, &(x, z))| {
-                (x ^ self.flip(base + 2 * qubit), z ^ self.flip(base + 2 * qubit + 1))
+                (
+                    x ^ self.flip(base + 2 * qubit),
+                    z ^ self.flip(base + 2 * qubit + 1),
+                )
             })
             .collect();
         self.enter(&next, Some(&carried))?;
@@ -157,7 +160,8 @@ impl<'p> Machine<'p> {
             End::Branch(branch) => 2 * branch.carried.len(),
         };
         self.flips.clear();
-        self.flips.resize((segment.reference.len() + exits).div_ceil(64), 0);
+        self.flips
+            .resize((segment.reference.len() + exits).div_ceil(64), 0);
         for (&(x, z), entry) in carried.unwrap_or(&[]).iter().zip(&segment.entry) {
             if x {
                 self.toggle(segment, entry[0]);
@@ -176,9 +180,7 @@ impl<'p> Machine<'p> {
 
     #[inline]
     fn toggle(&mut self, segment: &Segment, set: SetId) {
-        for &index in segment.sets.get(set) {
-            self.flips[index as usize / 64] ^= 1 << (index % 64);
-        }
+        segment.sets.toggle(set, &mut self.flips);
     }
 
     /// The sign of a reading: reference ⊕ flips.
@@ -219,8 +221,11 @@ impl<'p> Machine<'p> {
     /// Stores an outcome, flipped by readout error.
     fn store(&mut self, value: bool, outcome: &Outcome, rng: &mut impl Rng) {
         let Some(bit) = outcome.bit else { return };
-        let chance =
-            if value { outcome.flip.one_to_zero } else { outcome.flip.zero_to_one };
+        let chance = if value {
+            outcome.flip.one_to_zero
+        } else {
+            outcome.flip.zero_to_one
+        };
         let flipped = chance > 0.0 && rng.random::<f64>() < chance;
         if let (true, Some(location)) = (flipped, outcome.location) {
             self.event(location, 0);
@@ -242,7 +247,10 @@ impl<'p> Machine<'p> {
                 self.fire(segment, &segment.places[place as usize], rng);
             });
         }
-        segment.steps.iter().all(|step| self.step(step, segment, register, draw, rng))
+        segment
+            .steps
+            .iter()
+            .all(|step| self.step(step, segment, register, draw, rng))
     }
 
     fn step<R: Register>(
@@ -254,48 +262,86 @@ impl<'p> Machine<'p> {
         rng: &mut ShotRng,
     ) -> bool {
         match *step {
-            Step::Coin { reading, flips, ref outcome } => {
+            Step::Coin {
+                reading,
+                flips,
+                ref outcome,
+            } => {
                 let raw = rng.random::<bool>();
                 self.measured(raw, reading, flips, outcome, segment, rng);
             }
-            Step::Known { reading, ref outcome } => {
+            Step::Known {
+                reading,
+                ref outcome,
+            } => {
                 let value = self.read(segment, reading);
                 self.store(value, outcome, rng);
             }
-            Step::Measure { slot, reading, flips, ref outcome } => {
-                let Some(raw) = register.measure(slot, rng) else { return false };
+            Step::Measure {
+                slot,
+                reading,
+                flips,
+                ref outcome,
+            } => {
+                let Some(raw) = register.measure(slot, rng) else {
+                    return false;
+                };
                 self.measured(raw, reading, flips, outcome, segment, rng);
             }
             Step::Activate { slot } => register.plus(slot),
             Step::Prepare { slot, site } => register.prepare(slot, site, draw),
             Step::Primitive(index) => register.primitive(&segment.primitives[index as usize]),
             Step::ControlledNot { control, target } => register.controlled_not(control, target),
-            Step::Rotate { slot, site, reading, condition } => {
+            Step::Rotate {
+                slot,
+                site,
+                reading,
+                condition,
+            } => {
                 if self.holds(condition) {
                     let flipped = self.read(segment, reading);
                     register.rotate(slot, site, flipped, draw);
                 }
             }
-            Step::QuarterTurn { slot, reading, condition } => {
+            Step::QuarterTurn {
+                slot,
+                reading,
+                condition,
+            } => {
                 if self.bit(condition) {
                     let flipped = self.read(segment, reading);
                     register.quarter_turn(slot, flipped);
                 }
             }
-            Step::Ccz { slots, readings, site, condition } => {
+            Step::Ccz {
+                slots,
+                readings,
+                site,
+                condition,
+            } => {
                 if self.holds(condition) {
                     let flipped = readings.map(|reading| self.read(segment, reading));
                     register.ccz(slots, flipped, site, draw);
                 }
             }
-            Step::Quadratic { slots, inputs, condition } => {
+            Step::Quadratic {
+                slots,
+                inputs,
+                condition,
+            } => {
                 if self.holds(condition) {
                     let inputs =
                         inputs.map(|input| (input.slots, self.read(segment, input.reading)));
                     quadratic(register, slots, inputs);
                 }
             }
-            Step::Damp { slot, reading, gamma, flips, location } => {
+            Step::Damp {
+                slot,
+                reading,
+                gamma,
+                flips,
+                location,
+            } => {
                 let flipped = self.read(segment, reading);
                 match register.damp(slot, flipped, gamma, rng) {
                     None => return false,
@@ -303,12 +349,21 @@ impl<'p> Machine<'p> {
                     Some(true) => self.decay(segment, flips, location),
                 }
             }
-            Step::DampKnown { reading, gamma, flips, location } => {
+            Step::DampKnown {
+                reading,
+                gamma,
+                flips,
+                location,
+            } => {
                 if self.read(segment, reading) && rng.random::<f64>() < gamma {
                     self.decay(segment, flips, location);
                 }
             }
-            Step::Assign { bit, ref value, condition } => {
+            Step::Assign {
+                bit,
+                ref value,
+                condition,
+            } => {
                 if self.holds(condition) {
                     let value = value.evaluate(&|index| self.bit(index));
                     self.set_bit(bit, value);
@@ -357,13 +412,11 @@ impl<'p> Machine<'p> {
 
 /// −1 where all three inputs are 1, each the parity of some of two slots and a
 /// sign: a quadratic form of at most two bits, found from its truth table.
-fn quadratic<R: Register>(
-    register: &mut R,
-    slots: [Option<u16>; 2],
-    inputs: [(u8, bool); 3],
-) {
+fn quadratic<R: Register>(register: &mut R, slots: [Option<u16>; 2], inputs: [(u8, bool); 3]) {
     let value = |bits: u8| {
-        inputs.iter().all(|&(mask, sign)| ((mask & bits).count_ones() & 1 == 1) ^ sign)
+        inputs
+            .iter()
+            .all(|&(mask, sign)| ((mask & bits).count_ones() & 1 == 1) ^ sign)
     };
     let (none, first, second, both) = (value(0), value(1), value(2), value(3));
     if let Some(slot) = slots[0]

@@ -23,7 +23,10 @@ impl AuditBlock {
             attempts: shots.iter().map(|shot| shot.attempts).collect(),
             peak_active: shots.iter().map(|shot| shot.peak_active).collect(),
             terms_left: shots.iter().map(|shot| shot.register.terms_left).collect(),
-            norm: shots.iter().map(|shot| shot.register.norm.unwrap_or(f64::NAN)).collect(),
+            norm: shots
+                .iter()
+                .map(|shot| shot.register.norm.unwrap_or(f64::NAN))
+                .collect(),
         }
     }
 }

@@ -11,8 +11,8 @@ use ndarray::{Array1, Array2, s};
 
 use super::layout::{self, LocationRecord, SiteRecord, plain};
 use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header};
-use crate::sampler::{FaultEvent, Rows};
 use super::{Part, RegisterHeader, StoreError, block};
+use crate::sampler::{FaultEvent, Rows};
 
 /// Which of the two sets of rows.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
