@@ -5,8 +5,8 @@ use crate::magic::mixing::log_extent;
 use crate::magic::{Site, SiteKind, Sparsifier};
 use crate::program::{Location, MAX_SLOTS, Program};
 use crate::readout::Register;
-use crate::readout::choice::{self, Choice, Readout, Terms, Wish};
-use crate::readout::dense::{self, Dense};
+use crate::readout::choice::{self, Choice, Readout, TermCount, Wish};
+use crate::readout::dense::Dense;
 use crate::readout::probe::{Probe, Settings};
 use crate::report::Summary;
 use crate::sampler::{Block, Drawing, Family, Interrupt, Sampler};
@@ -46,9 +46,9 @@ pub(super) fn run(options: &Run) -> Result<(), CommandError> {
         },
         delta: options.delta,
         terms: match options.terms {
-            None => Terms::FromDelta,
-            Some(TermsOption::Average) => Terms::Average,
-            Some(TermsOption::Fixed(terms)) => Terms::Fixed(terms),
+            None => TermCount::FromDelta,
+            Some(TermsOption::Average) => TermCount::Average,
+            Some(TermsOption::Fixed(terms)) => TermCount::Fixed(terms),
         },
         threads,
         memory: available_memory(),
@@ -278,15 +278,17 @@ impl<'a> Plan<'a> {
         };
         let total = self.shots.end - self.shots.start;
         let mut progress = Shown::new("shots", total, options.quiet);
-        let room = match self.choice.readout {
-            Readout::Dense => dense::MAX_ACTIVE,
-            Readout::Probe => MAX_SLOTS,
-        };
         let drawing = match self.choice.terms {
             None => Drawing::Members,
             Some(terms) => Drawing::Terms(terms as usize),
         };
-        let sampler = self.sampler(program, &sparsifier, room, options.faults, drawing);
+        let sampler = self.sampler(
+            program,
+            &sparsifier,
+            self.choice.room,
+            options.faults,
+            drawing,
+        );
         let sample = Sample {
             sampler: &sampler,
             family: Family::Shots,

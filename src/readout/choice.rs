@@ -1,7 +1,10 @@
 //! Which read-out a run takes, with which settings.
 
+use num_complex::Complex64;
+
+use crate::clifford::terms::Terms;
 use crate::magic::mixing::{mixing_weight, terms_for_average, terms_for_delta};
-use crate::program::{Program, Step};
+use crate::program::{MAX_SLOTS, Program, Step};
 
 use super::{dense, probe};
 
@@ -32,7 +35,7 @@ pub struct Wish {
     /// Trace-norm error of the averaged output state.
     pub delta: f64,
     /// Number of terms.
-    pub terms: Terms,
+    pub terms: TermCount,
     /// Threads that hold a register each.
     pub threads: usize,
     /// Bytes that may be used.
@@ -41,7 +44,7 @@ pub struct Wish {
 
 /// How the number of terms is chosen.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Terms {
+pub enum TermCount {
     /// From δ.
     FromDelta,
     /// The number that makes companion-corrected averages cheapest.
@@ -61,8 +64,10 @@ pub struct Choice {
     pub mixing_weight: f64,
     /// Settings of `probe`.
     pub probe: Option<probe::Settings>,
-    /// Bytes all registers take.
+    /// Bytes all registers take; for a branching program at least.
     pub memory: u128,
+    /// Most active qubits a register may hold.
+    pub room: usize,
 }
 
 /// Why a wish cannot be granted.
@@ -191,12 +196,19 @@ fn dense_choice(program: &Program, wish: &Wish) -> Result<Choice, ChoiceError> {
             advice,
         });
     }
+    // Registers of a branching program grow as its shots need.
+    let share = u128::from(wish.memory) / wish.threads as u128;
+    let room = (certain..dense::MAX_ACTIVE)
+        .take_while(|&active| dense::memory(active + 1) <= share)
+        .last()
+        .map_or(certain, |active| active + 1);
     Ok(Choice {
         readout: Readout::Dense,
         terms: None,
         mixing_weight: 0.0,
         probe: None,
         memory: needed,
+        room: room.min(dense::MAX_ACTIVE),
     })
 }
 
@@ -210,19 +222,19 @@ fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choic
     // least at equal halves. Without magic there is one term and no estimate.
     let half = wish.delta / 2.0;
     let terms = match wish.terms {
-        Terms::Fixed(terms) => Some(terms),
-        Terms::Average => terms_for_average(log_extent),
-        Terms::FromDelta => terms_for_delta(log_extent, half),
+        TermCount::Fixed(terms) => Some(terms),
+        TermCount::Average => terms_for_average(log_extent),
+        TermCount::FromDelta => terms_for_delta(log_extent, half),
     };
     let too_many = ChoiceError::TooManyTerms {
         log10_extent: log_extent / std::f64::consts::LN_10,
         delta: wish.delta,
     };
     let terms = terms.ok_or(too_many)?;
-    let slots = program.slots();
-    let needed = term_memory(slots) * u128::from(terms) * wish.threads as u128;
+    let needed = term_memory(program) * u128::from(terms) * wish.threads as u128;
     if needed > u128::from(wish.memory) {
-        let fitting = u128::from(wish.memory) / (term_memory(slots) * wish.threads as u128).max(1);
+        let fitting =
+            u128::from(wish.memory) / (term_memory(program) * wish.threads as u128).max(1);
         let fitting = (fitting as u64).max(1);
         let delta = 4.0 * mixing_weight(log_extent, fitting);
         let advice = if delta < 2.0 {
@@ -250,14 +262,19 @@ fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choic
             cap: probe::acceptance_cap(log_extent, terms, probes),
         }),
         memory: needed,
+        room: MAX_SLOTS,
     })
 }
 
-/// Bytes of one term on `slots` slots, drawn components included.
-fn term_memory(slots: usize) -> u128 {
-    let words = (slots.div_ceil(64).next_power_of_two().max(1)) as u128;
-    let columns = slots as u128;
-    3 * columns * words * 8 + 8 * words * 8 + 64 + columns
+/// Bytes of one term, with its drawn components and weight.
+fn term_memory(program: &Program) -> u128 {
+    let slots = program.slots();
+    let state = match slots {
+        0..=64 => Terms::<1>::new(slots).bytes_per_term(),
+        65..=128 => Terms::<2>::new(slots).bytes_per_term(),
+        _ => Terms::<4>::new(slots).bytes_per_term(),
+    };
+    (state + size_of::<Complex64>() + program.sites().len()) as u128
 }
 
 /// Rough nanoseconds a shot.

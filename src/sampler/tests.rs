@@ -32,6 +32,7 @@ type Matrix = Vec<Vec<Complex64>>;
 
 const ZERO: Complex64 = Complex64::new(0.0, 0.0);
 
+#[allow(clippy::needless_range_loop)] // rows and columns are permuted
 fn pauli_matrix(qubits: usize, letters: &[(u32, Pauli)]) -> Matrix {
     let size = 1 << qubits;
     let mut matrix = vec![vec![ZERO; size]; size];
@@ -559,12 +560,12 @@ fn dense_shots_follow_the_density_matrix() {
 /// Terms follow the mixing law P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), with
 /// P_comp sampled by companion shots: the same circuit with single terms.
 /// Circuits measure only at the end, where the law is exact but for the bias
-/// of the estimates, which 64 random states keep below the resolution.
+/// of the estimates, which 32 random states keep below the resolution.
 #[test]
 fn probe_shots_follow_the_mixing_law() {
     let mut rng = Pcg64::seed_from_u64(2);
     let mut tested = 0;
-    for round in 0..60 {
+    for round in 0..44 {
         let qubits = 2 + round % 3;
         let menu = Menu {
             damping: false,
@@ -606,7 +607,7 @@ fn probe_shots_follow_the_mixing_law() {
             probes: 64,
             cap: acceptance_cap(extent, terms, 64),
         };
-        let shots = 20_000;
+        let shots = 15_000;
         let counts = sample(
             &program,
             Family::Shots,
@@ -631,7 +632,7 @@ fn probe_shots_follow_the_mixing_law() {
             "round {round}: {found} deviations\n{circuit:#?}"
         );
     }
-    assert!(tested > 30, "{tested} circuits had magic");
+    assert!(tested > 20, "{tested} circuits had magic");
 }
 
 /// E‖Ω‖² = 1 + (ξ − 1)/k at a size no dense reference reaches: 30 dephased T
