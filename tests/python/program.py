@@ -48,7 +48,9 @@ class Outcome:
     companion: dict
     roles: dict
     sites: np.ndarray
-    stderr: str
+    faults: dict
+    locations: np.ndarray
+    stderr: str = ""
 
     def counts(self, names=None, companion=False):
         """How often each value of the registers came, the first register's bit 0
@@ -108,5 +110,6 @@ def read(path):
                 table[name] = data[()]
                 if group == "shots":
                     roles[name] = data.attrs["role"]
-        sites = file["sites"][()] if "sites" in file else None
-        return Outcome(dict(file.attrs), tables["shots"], tables["companion"], roles, sites, "")
+        faults = {name: data[()] for name, data in file.get("faults", {}).items()}
+        return Outcome(dict(file.attrs), tables["shots"], tables["companion"], roles,
+                       file["sites"][()], faults, faults.pop("locations", None))

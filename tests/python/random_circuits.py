@@ -14,7 +14,8 @@ COMPARISONS = ("==", "!=", "<", "<=", ">", ">=")
 class Generator:
     """Fills a circuit with random statements."""
 
-    def __init__(self, seed, qubits, measured_early):
+    def __init__(self, seed, qubits, measured_early, damping):
+        self.damping = damping
         self.random = np.random.default_rng(seed)
         self.circuit = Circuit()
         self.q = self.circuit.qubits("q", qubits)
@@ -33,7 +34,7 @@ class Generator:
         p = self.number(0.005, 0.12)
         words = channels.all_pauli_words(width)
         chosen = self.random.choice(len(words), size=min(3, len(words)), replace=False)
-        return [
+        kinds = [
             lambda: channels.depolarizing(p),
             lambda: channels.depolarizing_each(p),
             lambda: channels.dephasing(p),
@@ -41,11 +42,12 @@ class Generator:
             lambda: channels.bit_phase_flip(p),
             lambda: channels.pauli(**{words[i]: round(p / (2 + j), 5)
                                       for j, i in enumerate(chosen)}),
-            lambda: channels.amplitude_damping(p),
-            lambda: channels.relaxation("80us", "60us", f"{self.number(1, 20)}us"),
             lambda: channels.over_rotation(str(self.random.choice(list("xyz"))),
                                            self.number(-0.5, 0.5)),
-        ][self.random.integers(9)]()
+            lambda: channels.amplitude_damping(p),
+            lambda: channels.relaxation("80us", "60us", f"{self.number(1, 20)}us"),
+        ]
+        return kinds[self.random.integers(9 if self.damping else 7)]()
 
     def some_noise(self, width):
         """No channel mostly, else one or two."""
@@ -108,7 +110,8 @@ class Generator:
             self.circuit.reset(self.some_qubit(), noise=self.some_noise(1))
         elif kind < 0.95:
             self.circuit.delay("300ns", self.some_qubit(),
-                               noise=[channels.relaxation("9us", "2us")])
+                               noise=[channels.relaxation("9us", "2us")]
+                               if self.damping else [])
         else:
             self.circuit.measure(self.some_qubit())
 
@@ -121,14 +124,14 @@ class Generator:
         self.circuit.rule(["measure"], channels.readout_flip(0.01, 0.02))
 
 
-def build(seed, qubits=3, calls=16, measured_early=2, rules=True):
-    """A random circuit."""
-    generator = Generator(seed, qubits, measured_early)
+def build(seed, qubits=3, calls=16, measured_early=2, damping=True):
+    """A random circuit. Without `damping` it has no amplitude damping and no
+    relaxation, which sparse terms cannot do on entangled qubits."""
+    generator = Generator(seed, qubits, measured_early, damping)
     for qubit in generator.q:
         generator.circuit.gate("u3", qubit, parameters=tuple(
             generator.number(-3, 3) for _ in range(3)))
-    if rules:
-        generator.rules()
+    generator.rules()
     for _ in range(measured_early):
         for _ in range(calls // (measured_early + 1)):
             generator.statement()

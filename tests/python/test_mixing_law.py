@@ -136,11 +136,12 @@ class Program(unittest.TestCase):
                                        f"{out.counts() / SHOTS} for {law}")
 
     def test_random_circuits_with_their_own_companion(self):
-        """Circuits with every gate, channel and feedback: the companion's law is
+        """Circuits with every gate, Pauli noise and feedback: the companion's law is
         taken from its own shots."""
         for seed in range(6):
             with self.subTest(seed=seed):
-                circuit = random_circuits.build(seed, qubits=3, calls=14, measured_early=seed % 3)
+                circuit = random_circuits.build(seed, qubits=3, calls=14, measured_early=seed % 3,
+                                                damping=False)
                 ideal = distribution(circuit)
                 out = program.run(circuit, SHOTS, seed=300 + seed, readout="probe",
                                   delta=DELTA, terms=4, companion=SHOTS)
@@ -148,14 +149,15 @@ class Program(unittest.TestCase):
                     fit.mixture_p_value(out.counts(), out.counts(companion=True), ideal,
                                         out.attributes["mixing_weight"]), fit.FALSE_ALARM)
 
-    def test_many_terms_reach_the_ideal_law(self):
-        """With δ = 0.02 the shots are within δ/2 = 1 % of the ideal law: the
-        empirical distance stays below that plus its own sampling noise."""
+    def test_the_number_of_terms_follows_delta(self):
+        """k = ⌈1 + ξ(2/δ − 1)⌉, so that 2λ ≤ δ; the shots follow the law at that k."""
         circuit, ideal, companion, extent = laws(law_cases.entangled_t)
-        out = program.run(circuit, 20_000, seed=77, readout="probe", delta=0.02)
+        delta, shots = 0.2, 10_000
+        out = program.run(circuit, shots, seed=77, readout="probe", delta=delta)
         share = out.attributes["mixing_weight"]
-        self.assertLessEqual(2 * share, 0.02 * (1 + 1e-9))
-        self.assertEqual(out.attributes["terms"], np.ceil(1 + extent * (2 / 0.02 - 1)))
+        self.assertLessEqual(2 * share, delta * (1 + 1e-9))
+        self.assertEqual(out.attributes["terms"], np.ceil(1 + extent * (2 / delta - 1)))
+        self.assertEqual(out.attributes["delta"], delta)
         law = (1 - share) * ideal + share * companion
         self.assertGreater(fit.fit_p_value(out.counts(), law), fit.FALSE_ALARM)
 

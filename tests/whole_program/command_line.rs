@@ -89,23 +89,21 @@ fn help_and_version_succeed() {
 #[test]
 fn wrong_options_exit_with_2_and_write_nothing() {
     let (folder, circuit, out) = prepared();
-    for options in [
-        vec!["--shots", "many"],
-        vec!["--shots", "-5"],
-        vec!["--shots", "10", "--delta", "0"],
-        vec!["--shots", "10", "--delta", "nan"],
-        vec!["--shots", "10", "--terms", "0"],
-        vec!["--shots", "10", "--readout", "magic"],
-        vec!["--shots", "10", "--part", "3/2"],
-        vec!["--shots", "10", "--unknown"],
+    for (options, named) in [
+        (vec!["--shots", "many"], "--shots"),
+        (vec!["--shots", "-5"], "-5"),
+        (vec!["--shots", "10", "--delta", "0"], "--delta"),
+        (vec!["--shots", "10", "--delta", "nan"], "--delta"),
+        (vec!["--shots", "10", "--terms", "0"], "--terms"),
+        (vec!["--shots", "10", "--readout", "magic"], "--readout"),
+        (vec!["--shots", "10", "--part", "3/2"], "--part"),
+        (vec!["--shots", "10", "--set", "angle=1"], "angle"),
+        (vec!["--shots", "10", "--unknown"], "--unknown"),
     ] {
         let mut arguments = vec!["run", &circuit, "--out", &out];
         arguments.extend(&options);
         let message = fail(2, &arguments);
-        assert!(
-            message.contains(options[options.len().saturating_sub(2)]),
-            "{message}"
-        );
+        assert!(message.contains(named), "{message}");
         assert!(!folder.path("out.h5").exists());
     }
     fail(2, &[]);
@@ -396,6 +394,7 @@ fn an_interrupted_run_keeps_its_finished_shots() {
         start.elapsed()
     );
     let kept = tables(&folder.path("out.h5"), "shots");
+    assert_eq!(folder.names(), ["circuit.qasm", "out.h5"]);
     let rows = kept[0].1;
     assert!(rows > 0 && rows < 3_000_000_000, "{rows} shots");
     assert!(

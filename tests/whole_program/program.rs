@@ -27,6 +27,17 @@ impl Folder {
         self.text(name)
     }
 
+    /// Names of all files in it, in order.
+    pub fn names(&self) -> Vec<String> {
+        let entries = std::fs::read_dir(self.directory.path()).expect("the directory");
+        let name = |entry: std::io::Result<std::fs::DirEntry>| {
+            entry.expect("an entry").file_name().to_string_lossy().into_owned()
+        };
+        let mut names: Vec<String> = entries.map(name).collect();
+        names.sort();
+        names
+    }
+
     /// Path of a file in it as text.
     pub fn text(&self, name: &str) -> String {
         self.path(name)
