@@ -39,12 +39,12 @@ pub fn parse(name: &str, source: &str, options: &ParseOptions) -> Result<Circuit
     }
     let mut parser = Parser::new(source);
     let mut lowering = Lowering::new(source, &options.set, options.max_operations);
-    while let Some(step) = parser.next_statement() {
+    let mut go_on = true;
+    while go_on && let Some(step) = parser.next_statement() {
         lowering.set_version_2(parser.version_2());
         for warning in parser.take_warnings() {
             lowering.warn(warning);
         }
-        let mut go_on = true;
         for error in parser.take_errors() {
             go_on &= lowering.report(error);
         }
@@ -52,11 +52,8 @@ pub fn parse(name: &str, source: &str, options: &ParseOptions) -> Result<Circuit
             Step::Statement(statement) => go_on &= lowering.top_level(statement),
             Step::Broken(words) => lowering.doubt(words),
         }
-        if !go_on {
-            break;
-        }
     }
-    lowering.finish(name)
+    lowering.finish(name, go_on)
 }
 
 /// Reads one noise channel, `NAME(ARGUMENTS)`, whose arguments are constants.

@@ -3,7 +3,8 @@
 //! `inv` and `ctrl` turn a library gate into another one where the library has
 //! it; on a gate of the file they go to every statement of its body. `pow`
 //! repeats the call. `negctrl` turns over controls of the library gate it leads
-//! to, which stays one call.
+//! to, which stays one call. A global phase without a control leaves no
+//! operation.
 
 use std::rc::Rc;
 

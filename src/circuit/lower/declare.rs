@@ -179,7 +179,8 @@ impl<'a> Lowering<'a> {
     pub(super) fn check_inputs(&mut self) {
         let inputs = self.inputs;
         for name in inputs.keys() {
-            if self.used_inputs.contains(name.as_str()) {
+            let name = name.as_str();
+            if self.used_inputs.contains(name) || self.doubtful.contains(name) {
                 continue;
             }
             let known = self.used_inputs.iter().copied();

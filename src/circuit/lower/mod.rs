@@ -178,9 +178,12 @@ impl<'a> Lowering<'a> {
         }
     }
 
-    /// The circuit, or what is wrong with it.
-    pub fn finish(mut self, name: &str) -> Result<Circuit, Vec<Diagnostic>> {
-        self.check_inputs();
+    /// The circuit, or what is wrong with it; `complete` says whether all of the
+    /// text has been read.
+    pub fn finish(mut self, name: &str, complete: bool) -> Result<Circuit, Vec<Diagnostic>> {
+        if complete {
+            self.check_inputs();
+        }
         if !self.errors.is_empty() {
             return Err(self.errors);
         }
