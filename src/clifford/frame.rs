@@ -10,6 +10,26 @@ use crate::circuit::{Clifford, Pauli, PauliProduct};
 
 use super::pauli::{PauliString, bit, overlap, words_for};
 
+/// A Pauli string as the words that are not 0: (index, X parts, Z parts). A
+/// string on few qubits then touches few words of every row.
+struct Packed {
+    words: Vec<(usize, u64, u64)>,
+    phase: u8,
+}
+
+impl From<&PauliString> for Packed {
+    fn from(string: &PauliString) -> Self {
+        let words = string.x.iter().zip(&string.z).enumerate();
+        Packed {
+            words: words
+                .filter(|(_, (x, z))| **x | **z != 0)
+                .map(|(word, (x, z))| (word, *x, *z))
+                .collect(),
+            phase: string.phase,
+        }
+    }
+}
+
 /// A Clifford operator, up to a global phase.
 #[derive(Debug, Clone, PartialEq, Eq, Hash)]
 pub struct Frame {
@@ -161,7 +181,7 @@ impl Frame {
 
     /// C ← exp(−iπP/4)·C: a generator R that anticommutes with P becomes iPR.
     fn quarter_turn(&mut self, axis: &PauliProduct) {
-        let pulled = self.pull_back(axis);
+        let pulled = Packed::from(&self.pull_back(axis));
         for &(qubit, letter) in axis {
             let rows = [
                 (2 * qubit as usize, letter.z()),
@@ -181,35 +201,46 @@ impl Frame {
     }
 
     /// Row ← i^phase · row · string.
-    fn multiply_row(&mut self, row: usize, string: &PauliString, phase: u8) {
+    fn multiply_row(&mut self, row: usize, string: &Packed, phase: u8) {
         let words = self.words;
         let (x, z) = self.row_mut(row).split_at_mut(words);
-        let swapped = overlap(z, &string.x);
-        x.iter_mut().zip(&string.x).for_each(|(a, b)| *a ^= b);
-        z.iter_mut().zip(&string.z).for_each(|(a, b)| *a ^= b);
+        let mut swapped = 0;
+        for &(word, string_x, string_z) in &string.words {
+            swapped += (z[word] & string_x).count_ones();
+            x[word] ^= string_x;
+            z[word] ^= string_z;
+        }
         let sum = u32::from(self.phases[row] + string.phase + phase) + 2 * swapped;
         self.phases[row] = (sum & 3) as u8;
     }
 
-    fn row_anticommutes(&self, row: usize, string: &PauliString) -> bool {
+    fn row_anticommutes(&self, row: usize, string: &Packed) -> bool {
         let (x, z) = self.row(row).split_at(self.words);
-        (overlap(x, &string.z) + overlap(z, &string.x)) & 1 == 1
+        let parity = string
+            .words
+            .iter()
+            .fold(0, |parity, &(word, string_x, string_z)| {
+                parity ^ (x[word] & string_z) ^ (z[word] & string_x)
+            });
+        parity.count_ones() & 1 == 1
     }
 
     /// C ← C·(1 + K)/√2 for a string K with K² = −1: a row R that anticommutes
     /// with K becomes R·K.
     pub fn rotate_right(&mut self, generator: &PauliString) {
+        let generator = Packed::from(generator);
         for row in 0..2 * self.qubits {
-            if self.row_anticommutes(row, generator) {
-                self.multiply_row(row, generator, 0);
+            if self.row_anticommutes(row, &generator) {
+                self.multiply_row(row, &generator, 0);
             }
         }
     }
 
     /// C ← C·P for a Pauli string P.
     pub fn pauli_right(&mut self, string: &PauliString) {
+        let string = Packed::from(string);
         for row in 0..2 * self.qubits {
-            if self.row_anticommutes(row, string) {
+            if self.row_anticommutes(row, &string) {
                 self.negate(row);
             }
         }
@@ -222,18 +253,21 @@ impl Frame {
     /// W R W: a row that anticommutes with Z of the column takes a factor Q from
     /// the right, one that anticommutes with Q a factor Z, one with both −Z·Q.
     pub fn controlled_right(&mut self, column: usize, target: &PauliString) {
-        let mut control = PauliString::identity(self.qubits);
-        super::pauli::toggle(&mut control.z, column);
+        let control = Packed {
+            words: vec![(column / 64, 0, 1 << (column % 64))],
+            phase: 0,
+        };
+        let target = Packed::from(target);
         for row in 0..2 * self.qubits {
             let with_control = bit(self.row(row), column);
-            let with_target = self.row_anticommutes(row, target);
+            let with_target = self.row_anticommutes(row, &target);
             match (with_control, with_target) {
                 (false, false) => {}
-                (true, false) => self.multiply_row(row, target, 0),
+                (true, false) => self.multiply_row(row, &target, 0),
                 (false, true) => self.multiply_row(row, &control, 0),
                 (true, true) => {
                     self.multiply_row(row, &control, 2);
-                    self.multiply_row(row, target, 0);
+                    self.multiply_row(row, &target, 0);
                 }
             }
         }

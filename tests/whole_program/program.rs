@@ -31,7 +31,11 @@ impl Folder {
     pub fn names(&self) -> Vec<String> {
         let entries = std::fs::read_dir(self.directory.path()).expect("the directory");
         let name = |entry: std::io::Result<std::fs::DirEntry>| {
-            entry.expect("an entry").file_name().to_string_lossy().into_owned()
+            entry
+                .expect("an entry")
+                .file_name()
+                .to_string_lossy()
+                .into_owned()
         };
         let mut names: Vec<String> = entries.map(name).collect();
         names.sort();
