@@ -117,7 +117,7 @@ fn everything_comes_back() {
         attempts: (0..40_000).map(|i| i % 7 + 1).collect(),
         peak_active: (0..40_000).map(|i| (i % 5) as u16).collect(),
         terms_left: (0..40_000).collect(),
-        norm: vec![f64::NAN; 40_000],
+        norm: (0..40_000).map(|i| f64::from(i) / 3.0).collect(),
     };
     let faults: Vec<FaultEvent> = (0..20_000)
         .map(|i| FaultEvent {
