@@ -6,8 +6,8 @@ Each takes a `LawCircuit` (ideal or companion meaning) and fills it.
 import numpy as np
 
 from known_circuits import FACE_ANGLE
-from noise_channels import (amplitude_damping, bit_flip, dephasing, depolarizing,
-                            over_rotation, pauli, readout_flip)
+from noise_channels import (all_pauli_words, amplitude_damping, bit_flip, dephasing,
+                            depolarizing, over_rotation, pauli, readout_flip)
 
 QUARTER = ("pi/4", np.pi / 4)
 
@@ -168,10 +168,11 @@ def pauli_axes(c):
 
 
 def noise_in_between(c):
-    """Flips, joint noise and readout error between and after the sites."""
+    """Flips, joint noise and readout error between and after the sites; no Pauli
+    here commutes to the axis of a site, so that nothing merges."""
     q = c.qubits("q", 3)
     m = c.bits("m", 3)
-    c.rule(["cx"], depolarizing(0.05))
+    c.rule(["cx"], pauli(XI=0.04, ZX=0.03, IZ=0.05))
     c.rule(["measure"], readout_flip(0.02, 0.07))
     spread(c, q)
     c.gate("cx", q[0], q[1])
@@ -183,6 +184,27 @@ def noise_in_between(c):
     c.gate("cx", q[1], q[2])
     c.gate("sx", q[2])
     c.rotation("t", q[2])
+    spread(c, q)
+    c.measure_all(q, m)
+
+
+def noise_that_reaches_a_site(c):
+    """Joint depolarizing p, then sx, then t: the Pauli IY of the channel is the
+    axis of the site. Paired with the identity it is a dephasing of
+    q = (p/15)/(1 − 14p/15), which merges; every other Pauli and its partner have
+    equal weight and stay. Same identity as for a t right before."""
+    p = 0.1
+    q = c.qubits("q", 2)
+    m = c.bits("m", 2)
+    spread(c, q)
+    c.gate("cz", *q)
+    spread(c, q)
+    c.gate("cx", *q, noise=[depolarizing(p)])
+    if c.companion:
+        rest = {w: p / 15 for w in all_pauli_words(2) if w != "IY"}
+        c.statements[-1].after = (pauli(**rest),)
+    c.gate("sx", q[1])
+    c.rotation("t", q[1], dephasing=(p / 15) / (1 - 14 * p / 15))
     spread(c, q)
     c.measure_all(q, m)
 
@@ -223,5 +245,6 @@ CASES = {
     "depolarized t": (depolarized_t, (2,)),
     "pauli axes": (pauli_axes, (3, 8)),
     "noise in between": (noise_in_between, (2,)),
+    "noise that reaches a site": (noise_that_reaches_a_site, (2,)),
     "injection": (injection, (3,)),
 }

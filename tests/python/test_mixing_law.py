@@ -6,7 +6,7 @@ extents and against a sum over all draws. `Program` compares drawn shots with
 companion's own shots with P_comp. Every case is required to be sharp: the shots
 would tell the law from the ideal law with a power of at least 0.99.
 With 40,000 shots an error of about 2 % total variation is caught; the number of
-probes is set by a small --delta so that their bias stays below 0.1 %.
+probes is set by a small --delta so that their bias stays below 0.2 %.
 """
 
 import itertools
@@ -24,7 +24,7 @@ from reference import distribution
 
 SHOTS = 40_000
 # Sets the number of probes only; the number of terms is given by hand.
-DELTA = 0.01
+DELTA = 0.02
 SHARP = 0.99
 
 
@@ -150,13 +150,17 @@ class Program(unittest.TestCase):
                                         out.attributes["mixing_weight"]), fit.FALSE_ALARM)
 
     def test_the_number_of_terms_follows_delta(self):
-        """k = ⌈1 + ξ(2/δ − 1)⌉, so that 2λ ≤ δ; the shots follow the law at that k."""
+        """2λ ≤ δ asks for k ≥ ⌈1 + ξ(2/δ − 1)⌉; a part of δ may be left to the
+        estimates, but no more than half. The shots follow the law at that k."""
         circuit, ideal, companion, extent = laws(law_cases.entangled_t)
         delta, shots = 0.2, 10_000
         out = program.run(circuit, shots, seed=77, readout="probe", delta=delta)
         share = out.attributes["mixing_weight"]
         self.assertLessEqual(2 * share, delta * (1 + 1e-9))
-        self.assertEqual(out.attributes["terms"], np.ceil(1 + extent * (2 / delta - 1)))
+        terms = int(out.attributes["terms"])
+        self.assertGreaterEqual(terms, np.ceil(1 + extent * (2 / delta - 1)))
+        self.assertLessEqual(terms, np.ceil(1 + extent * (4 / delta - 1)))
+        self.assertAlmostEqual(share, mixing_weight(extent, terms), 9)
         self.assertEqual(out.attributes["delta"], delta)
         law = (1 - share) * ideal + share * companion
         self.assertGreater(fit.fit_p_value(out.counts(), law), fit.FALSE_ALARM)
