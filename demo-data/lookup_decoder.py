@@ -29,28 +29,40 @@ def x_syndrome(shots):
     return total ^ np.logical_xor.reduce(rounds, axis=1)
 
 
-def show(name, bits):
-    """Print the mean of (-1)^bit and its standard error."""
+def mean_and_error(bits):
+    """Mean of (-1)^bit and its standard error."""
     signs = 1 - 2 * bits.astype(float)
-    error = signs.std() / max(len(signs), 1) ** 0.5
-    print(f"{name:<28}{signs.mean():8.4f} +- {error:.4f}   ({len(signs)} shots)")
+    return signs.mean(), signs.std() / len(signs) ** 0.5
+
+
+def logical_bits(shots):
+    """The logical bit of every shot as read, and as the decoder says."""
+    logical = shots["logical"][:, 0]
+    return {"as read": logical, "decoded": logical ^ x_syndrome(shots).any(axis=1)}
+
+
+def quiet(shots):
+    """Which shots have every check 0."""
+    names = [name for name in shots if shots[name].attrs["role"] == "check"]
+    return ~np.concatenate([shots[name][:] for name in names], axis=1).any(axis=1)
 
 
 def main():
     with h5py.File(sys.argv[1], "r") as file:
-        for group in ("shots", "companion"):
-            if group not in file:
-                continue
-            shots = file[group]
-            logical = shots["logical"][:, 0]
-            syndrome = x_syndrome(shots)
-            names = [name for name in shots if shots[name].attrs["role"] == "check"]
-            quiet = ~np.concatenate([shots[name][:] for name in names], axis=1).any(axis=1)
-            print(group)
-            show("  as read", logical)
-            show("  decoded", logical ^ syndrome.any(axis=1))
-            show("  only shots with no check", logical[quiet])
-    print(f"without faults              {np.cos(np.pi / 4):8.4f}")
+        shots, weight = file["shots"], file.attrs["mixing_weight"]
+        for name, bits in logical_bits(shots).items():
+            mean, error = mean_and_error(bits)
+            print(f"{name:<26}{mean:8.4f} +- {error:.4f}")
+            if weight > 0 and "companion" in file:
+                # The drawn shots hold a share of companion shots; take it out.
+                other, other_error = mean_and_error(logical_bits(file["companion"])[name])
+                mean = (mean - weight * other) / (1 - weight)
+                error = np.hypot(error, weight * other_error) / (1 - weight)
+                print(f"{'  corrected':<26}{mean:8.4f} +- {error:.4f}")
+        kept = quiet(shots)
+        mean, error = mean_and_error(shots["logical"][:, 0][kept])
+        print(f"{'only shots with no check':<26}{mean:8.4f} +- {error:.4f}   ({kept.mean():.1%} of them)")
+    print(f"{'without faults':<26}{np.cos(np.pi / 4):8.4f}")
 
 
 if __name__ == "__main__":
