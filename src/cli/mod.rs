@@ -1,6 +1,6 @@
 //! The command line.
 //!
-//! Options are declared in [`options`]; each command has a file of its own.
+//! Options are declared in one file; each command has a file of its own.
 //! Results go to files, the summary to stdout, everything else to stderr.
 //!
 //! Exit status: 0 done; 1 failed at run time; 2 the input or the options are

@@ -34,7 +34,7 @@ pub(super) enum Command {
 #[command(after_help = "Examples:\n  \
     shottower run circuit.qasm --noise bench.toml --shots 100000 --out shots.h5\n  \
     shottower run circuit.qasm --shots 1000 --delta 0.05 --seed 7 --readout probe --out shots.h5\n  \
-    shottower run sweep.qasm --set angle=0.3 --shots 5000 --out angle-0.3.h5")]
+    shottower run sweep.qasm --set theta=0.3 --shots 5000 --out theta-0.3.h5")]
 pub(super) struct Run {
     /// Circuit file, OpenQASM 3 or 2
     #[arg(value_name = "CIRCUIT")]
@@ -181,7 +181,7 @@ fn part(text: &str) -> Result<(u64, u64), String> {
 }
 
 fn assignment(text: &str) -> Result<(String, f64), String> {
-    let expected = "expected NAME=VALUE with a number, for example angle=0.3";
+    let expected = "expected NAME=VALUE with a number, for example theta=0.3";
     let (name, value) = text.split_once('=').ok_or(expected)?;
     let value: f64 = value.trim().parse().map_err(|_| expected)?;
     if !value.is_finite() || name.trim().is_empty() {

@@ -1,5 +1,7 @@
 //! `run`: draw shots of a circuit into a result file.
 
+use std::time::{Duration, Instant};
+
 use crate::circuit::Register as BitRegister;
 use crate::magic::mixing::log_extent;
 use crate::magic::{Site, SiteKind, Sparsifier};
@@ -427,14 +429,20 @@ fn start_threads(wanted: Option<u16>) -> Result<usize, CommandError> {
     Ok(rayon::current_num_threads())
 }
 
-/// The first Ctrl-C asks the work to stop; the second one ends the program.
+/// The first Ctrl-C asks the work to stop; a later one ends the program. Some
+/// senders deliver one request twice at once, so a second signal counts only
+/// after a while.
 fn catch_interrupts() -> Result<(), CommandError> {
-    ctrlc::set_handler(|| {
-        if INTERRUPT.raised() {
-            std::process::exit(130);
+    const SAME_REQUEST: Duration = Duration::from_secs(1);
+    let mut first: Option<Instant> = None;
+    ctrlc::set_handler(move || match first {
+        None => {
+            first = Some(Instant::now());
+            INTERRUPT.raise();
+            message::note("stopping at the next shot; finished shots are kept");
         }
-        INTERRUPT.raise();
-        message::note("stopping at the next shot; finished shots are kept");
+        Some(first) if first.elapsed() < SAME_REQUEST => {}
+        Some(_) => std::process::exit(130),
     })
     .map_err(|error| CommandError::Usage(format!("cannot watch for Ctrl-C: {error}")))
 }

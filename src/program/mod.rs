@@ -5,7 +5,7 @@
 //! sign, so the frame is walked once with noise off and every free outcome 0,
 //! and emits a short list of [`Step`]s on the active register. Everything that
 //! varies is a Pauli of the circuit that *flips* a set of later readings; a
-//! backward pass finds all these sets ([`flips`]).
+//! backward pass finds all these sets.
 //!
 //! Measurement, reset or damping under a condition does change the structure:
 //! it ends a [`Segment`]. The next one is compiled when a shot first needs it

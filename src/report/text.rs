@@ -181,10 +181,7 @@ impl Summary {
             writeln!(out, "Outcomes are written with bit 0 on the right.")?;
         }
         if self.has_correction() {
-            writeln!(
-                out,
-                "Corrected: the companion's share λ taken out; unbiased."
-            )?;
+            writeln!(out, "Corrected: the companion's share λ taken out.")?;
         } else if self.terms == Some(1) {
             writeln!(
                 out,
