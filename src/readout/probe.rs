@@ -153,31 +153,6 @@ fn wide<const W: usize>(mask: &[u64; 4]) -> [u64; W] {
     std::array::from_fn(|word| mask[word])
 }
 
-/// Pairs of the three qubits of a CCZ, in the order of a component's bits.
-const PAIRS: [[usize; 2]; 3] = [[0, 1], [1, 2], [0, 2]];
-
-/// D_b of a CCZ on x ⊕ flipped, as Z and CZ gates and a sign.
-///
-/// A factor (−1)^(x_i⊕f_i) is (−1)^f_i·(−1)^x_i, and (x_i⊕f_i)(x_j⊕f_j) =
-/// x_i·x_j ⊕ f_j·x_i ⊕ f_i·x_j ⊕ f_i·f_j.
-fn flipped_component(b: u8, flipped: [bool; 3]) -> QuadraticPhase {
-    let component = CczSite::component(b);
-    let mut phase = QuadraticPhase {
-        z: [0, 1, 2].map(|qubit| component.z >> qubit & 1 == 1),
-        cz: [0, 1, 2].map(|pair| component.cz >> pair & 1 == 1),
-        negative: component.negative,
-    };
-    for (z, flip) in phase.z.into_iter().zip(flipped) {
-        phase.negative ^= z && flip;
-    }
-    for ([i, j], cz) in PAIRS.into_iter().zip(phase.cz) {
-        phase.z[i] ^= cz && flipped[j];
-        phase.z[j] ^= cz && flipped[i];
-        phase.negative ^= cz && flipped[i] && flipped[j];
-    }
-    phase
-}
-
 impl<const W: usize> Register for Probe<'_, W> {
     fn start(&mut self, draw: &Draw) {
         self.terms.reset(&draw.weights);
@@ -242,8 +217,9 @@ impl<const W: usize> Register for Probe<'_, W> {
 
     fn ccz(&mut self, slots: [u16; 3], flipped: [bool; 3], site: u32, draw: &Draw) {
         let components = draw.row(site as usize);
-        let table: [QuadraticPhase; 8] =
-            std::array::from_fn(|b| flipped_component(b as u8, flipped));
+        let table: [QuadraticPhase; 8] = std::array::from_fn(|b| {
+            QuadraticPhase::from(CczSite::component(b as u8)).flipped(flipped)
+        });
         self.terms.quadratic(slots.map(usize::from), |label| {
             table[usize::from(components[label as usize])]
         });

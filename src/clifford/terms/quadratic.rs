@@ -1,5 +1,7 @@
 //! Signs that are quadratic in three bits.
 
+use crate::magic::CczComponent;
+
 /// A diagonal Clifford gate with entries ±1 on three slots.
 ///
 /// On |x0 x1 x2⟩ it is (−1) to the number of: `negative`, x_i with `z[i]`,
@@ -17,18 +19,18 @@ pub struct QuadraticPhase {
 /// The pairs of [`QuadraticPhase::cz`].
 pub(crate) const PAIRS: [(usize, usize); 3] = [(0, 1), (1, 2), (0, 2)];
 
-impl QuadraticPhase {
-    /// The component D_b of CCZ = (1/6) Σ_b D_b: the diagonal of
-    /// ∏ (X_i CZ_jk)^{b_i}|+++⟩, Quantum 3, 181 (2019). Since
-    /// CCZ·X_i·CCZ = X_i CZ_jk it is the sign of ccz(x)·ccz(x ⊕ b).
-    pub fn ccz_component(b: [bool; 3]) -> Self {
-        Self {
-            z: [b[1] & b[2], b[0] & b[2], b[0] & b[1]],
-            cz: [b[2], b[0], b[1]],
-            negative: b[0] & b[1] & b[2],
+impl From<CczComponent> for QuadraticPhase {
+    fn from(component: CczComponent) -> Self {
+        let bits = |mask: u8| [0, 1, 2].map(|bit| mask >> bit & 1 == 1);
+        QuadraticPhase {
+            z: bits(component.z),
+            cz: bits(component.cz),
+            negative: component.negative,
         }
     }
+}
 
+impl QuadraticPhase {
     /// x → the sign at x ⊕ s: the gate between two X on the slots of s.
     pub fn flipped(self, s: [bool; 3]) -> Self {
         let mut flipped = self;
@@ -59,17 +61,18 @@ impl QuadraticPhase {
 #[cfg(test)]
 mod tests {
     use super::QuadraticPhase;
+    use crate::magic::CczSite;
 
     fn bits(number: u32) -> [bool; 3] {
         [0, 1, 2].map(|i| number >> i & 1 == 1)
     }
 
-    /// (1/6) Σ_b D_b(x) is −1 for x = 111 and 1 elsewhere.
+    /// (1/6) Σ_b D_b(x) is −1 for x = 111 and 1 elsewhere: Quantum 3, 181 (2019).
     #[test]
     fn components_sum_to_ccz() {
         for x in 0..8 {
             let sum: i32 = (0..8)
-                .map(|b| QuadraticPhase::ccz_component(bits(b)).is_negative(bits(x)))
+                .map(|b| QuadraticPhase::from(CczSite::component(b)).is_negative(bits(x)))
                 .map(|negative| if negative { -1 } else { 1 })
                 .sum();
             assert_eq!(sum, if x == 7 { -6 } else { 6 });
