@@ -60,6 +60,11 @@ impl Frame {
         frame
     }
 
+    /// Bytes the tableau takes.
+    pub fn bytes(&self) -> usize {
+        8 * self.rows.len() + self.phases.len()
+    }
+
     /// Number of qubits.
     pub fn qubits(&self) -> usize {
         self.qubits

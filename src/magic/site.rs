@@ -34,6 +34,37 @@ pub enum SiteKind {
 }
 
 impl Site {
+    /// What the sparsified sum multiplies a term by for each component of a
+    /// member: √Ξ times the phase of the component's weight. 0 for components
+    /// that are never drawn.
+    pub fn factors(&self, member: usize) -> [Complex64; 8] {
+        let root = self.extent.sqrt();
+        let factor = |weight: Complex64| {
+            let modulus = weight.norm();
+            if modulus > 0.0 {
+                weight * (root / modulus)
+            } else {
+                weight
+            }
+        };
+        let mut factors = [Complex64::ZERO; 8];
+        match &self.kind {
+            SiteKind::Ccz(_) => factors = [Complex64::new(root, 0.0); 8],
+            SiteKind::Rotation(rotation) => {
+                for (entry, &weight) in factors.iter_mut().zip(&rotation.members[member].weights) {
+                    *entry = factor(weight);
+                }
+            }
+            SiteKind::Prepared(prepared) => {
+                let components = &prepared.members[member].components;
+                for (entry, &(_, weight)) in factors.iter_mut().zip(components) {
+                    *entry = factor(weight);
+                }
+            }
+        }
+        factors
+    }
+
     /// A site of this kind; its extent is that of the ensemble.
     /// `extent_without_noise` is that of the bare gate or of the state before
     /// any noise, at least 1.

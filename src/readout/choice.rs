@@ -15,6 +15,8 @@ pub enum Readout {
     Dense,
     /// Terms with fast norm estimation.
     Probe,
+    /// Terms with a sample that walks with the circuit.
+    Walk,
 }
 
 impl Readout {
@@ -23,6 +25,7 @@ impl Readout {
         match self {
             Readout::Dense => "dense",
             Readout::Probe => "probe",
+            Readout::Walk => "walk",
         }
     }
 }
@@ -76,7 +79,7 @@ pub enum ChoiceError {
     /// Too many active qubits for exact amplitudes.
     #[error(
         "read-out dense takes at most {} active qubits, this circuit needs {found}: choose \
-         --readout probe",
+         --readout walk",
         dense::MAX_ACTIVE
     )]
     TooManyActive {
@@ -97,19 +100,33 @@ pub enum ChoiceError {
     },
     /// Damping of an entangled qubit with terms.
     #[error(
-        "amplitude damping or relaxation acts on a qubit after it was entangled or measured; \
-         read-out probe cannot do that: choose --readout dense (at most {} active qubits, this \
-         circuit needs {active})",
-        dense::MAX_ACTIVE
+        "amplitude damping or relaxation acts on a qubit after it was entangled or measured, \
+         which only read-out dense can do (with at most {} active qubits; this circuit needs \
+         {active}), not {}: choose --readout dense, or make the damping act on fresh qubits",
+        dense::MAX_ACTIVE,
+        .readout.word()
     )]
     Damping {
+        /// The read-out that was tried.
+        readout: Readout,
         /// Active qubits of the circuit.
         active: usize,
     },
+    /// Too many random states an estimate.
+    #[error(
+        "read-out probe would need {probes:.1e} random states an estimate for δ = {delta}: raise \
+         --delta or choose --readout walk"
+    )]
+    TooManyProbes {
+        /// What δ asks for.
+        probes: f64,
+        /// δ.
+        delta: f64,
+    },
     /// More terms than can be counted.
     #[error(
-        "extent 10^{log10_extent:.1} with δ = {delta} asks for more than 10^18 terms: raise \
-         --delta, add noise to the sites, or use fewer non-Clifford gates"
+        "extent 10^{log10_extent:.1} with δ = {delta} asks for more than 4·10^9 terms, the most \
+         there can be: raise --delta, or use fewer or noisier non-Clifford gates"
     )]
     TooManyTerms {
         /// log10 ξ.
@@ -149,23 +166,20 @@ pub fn choose(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choice,
     match wish.readout {
         Some(Readout::Dense) => dense_choice(program, wish),
         Some(Readout::Probe) => probe_choice(program, log_extent, wish),
-        None => {
-            let dense = dense_choice(program, wish);
-            let probe = probe_choice(program, log_extent, wish);
-            match (dense, probe) {
-                (Ok(dense), Ok(probe)) => {
-                    Ok(if dense_cost(program) <= probe_cost(program, &probe) {
-                        dense
-                    } else {
-                        probe
-                    })
-                }
-                (Ok(dense), Err(_)) => Ok(dense),
-                (Err(_), Ok(probe)) => Ok(probe),
-                (Err(error), Err(ChoiceError::Damping { .. })) => Err(error),
-                (Err(_), Err(error)) => Err(error),
+        Some(Readout::Walk) => walk_choice(program, log_extent, wish),
+        // Probe costs more than walk at any size, so it is taken on request only.
+        None => match (
+            dense_choice(program, wish),
+            walk_choice(program, log_extent, wish),
+        ) {
+            (Ok(dense), Ok(walk)) => {
+                let cheaper = dense_cost(program) <= walk_cost(program, &walk);
+                Ok(if cheaper { dense } else { walk })
             }
-        }
+            (Ok(dense), Err(_)) => Ok(dense),
+            (Err(_), Ok(walk)) => Ok(walk),
+            (Err(_), Err(error)) => Err(error),
+        },
     }
 }
 
@@ -187,7 +201,7 @@ fn dense_choice(program: &Program, wish: &Wish) -> Result<Choice, ChoiceError> {
         let advice = if threads > 0 {
             format!("--threads {threads} would fit")
         } else {
-            "choose --readout probe".to_owned()
+            "choose --readout walk".to_owned()
         };
         return Err(ChoiceError::Memory {
             readout: Readout::Dense,
@@ -212,47 +226,73 @@ fn dense_choice(program: &Program, wish: &Wish) -> Result<Choice, ChoiceError> {
     })
 }
 
-fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choice, ChoiceError> {
+/// Most random states an estimate may be made of.
+const MAX_PROBES: f64 = 1e7;
+
+/// Largest log ξ at which sums of terms keep within the range of a double.
+const MAX_LOG_EXTENT: f64 = 600.0;
+
+/// Terms and their memory for a mixing error of at most `delta`.
+fn terms_choice(
+    program: &Program,
+    log_extent: f64,
+    readout: Readout,
+    delta: f64,
+    wish: &Wish,
+) -> Result<(u64, u128), ChoiceError> {
     if program.has_damping() {
         return Err(ChoiceError::Damping {
+            readout,
             active: program.peak_active(),
         });
     }
-    // Terms and random states cost k·L with k ∝ 1/δ_mixing and L ∝ 1/δ_probe:
-    // least at equal halves. Without magic there is one term and no estimate.
-    let half = wish.delta / 2.0;
     let terms = match wish.terms {
         TermCount::Fixed(terms) => Some(terms),
         TermCount::Average => terms_for_average(log_extent),
-        TermCount::FromDelta => terms_for_delta(log_extent, half),
+        TermCount::FromDelta => terms_for_delta(log_extent, delta),
     };
-    let too_many = ChoiceError::TooManyTerms {
+    let most = u64::from(u32::MAX);
+    let terms = terms.filter(|&terms| terms <= most && log_extent <= MAX_LOG_EXTENT);
+    let terms = terms.ok_or(ChoiceError::TooManyTerms {
         log10_extent: log_extent / std::f64::consts::LN_10,
         delta: wish.delta,
+    })?;
+    let share = term_memory(program) * wish.threads as u128;
+    let needed = share * u128::from(terms);
+    if needed <= u128::from(wish.memory) {
+        return Ok((terms, needed));
+    }
+    let fitting = ((u128::from(wish.memory) / share.max(1)) as u64).max(1);
+    let reached = 2.0 * mixing_weight(log_extent, fitting) * (wish.delta / delta);
+    let advice = if reached < 2.0 {
+        format!(
+            "--delta {:.2e} (or --terms {fitting}) would fit",
+            reached * 1.01
+        )
+    } else {
+        "no useful δ fits: use fewer or noisier non-Clifford gates".to_owned()
     };
-    let terms = terms.ok_or(too_many)?;
-    let needed = term_memory(program) * u128::from(terms) * wish.threads as u128;
-    if needed > u128::from(wish.memory) {
-        let fitting =
-            u128::from(wish.memory) / (term_memory(program) * wish.threads as u128).max(1);
-        let fitting = (fitting as u64).max(1);
-        let delta = 4.0 * mixing_weight(log_extent, fitting);
-        let advice = if delta < 2.0 {
-            format!(
-                "--delta {:.2e} (or --terms {fitting}) would fit",
-                delta * 1.01
-            )
-        } else {
-            "no useful δ fits: use fewer or noisier non-Clifford gates".to_owned()
-        };
-        return Err(ChoiceError::Memory {
-            readout: Readout::Probe,
-            needed,
-            available: wish.memory,
-            advice,
+    Err(ChoiceError::Memory {
+        readout,
+        needed,
+        available: wish.memory,
+        advice,
+    })
+}
+
+fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choice, ChoiceError> {
+    // Terms and random states cost k·L with k ∝ 1/δ_mixing and L ∝ 1/δ_probe:
+    // least at equal halves.
+    let half = wish.delta / 2.0;
+    let (terms, memory) = terms_choice(program, log_extent, Readout::Probe, half, wish)?;
+    let probes = probe::probes_for(program.inner_measurements(), half);
+    if terms > 1 && probes > MAX_PROBES {
+        return Err(ChoiceError::TooManyProbes {
+            probes,
+            delta: wish.delta,
         });
     }
-    let probes = probe::probes_for(program.inner_measurements(), half);
+    let probes = probes as usize;
     Ok(Choice {
         readout: Readout::Probe,
         terms: Some(terms),
@@ -260,8 +300,21 @@ fn probe_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choic
         probe: Some(probe::Settings {
             probes,
             cap: probe::acceptance_cap(log_extent, terms, probes),
+            branches: program.branches(),
         }),
-        memory: needed,
+        memory,
+        room: MAX_SLOTS,
+    })
+}
+
+fn walk_choice(program: &Program, log_extent: f64, wish: &Wish) -> Result<Choice, ChoiceError> {
+    let (terms, memory) = terms_choice(program, log_extent, Readout::Walk, wish.delta, wish)?;
+    Ok(Choice {
+        readout: Readout::Walk,
+        terms: Some(terms),
+        mixing_weight: mixing_weight(log_extent, terms),
+        probe: None,
+        memory,
         room: MAX_SLOTS,
     })
 }
@@ -283,20 +336,13 @@ fn dense_cost(program: &Program) -> f64 {
     steps * (20.0 + 1.5 * (program.peak_active().min(60) as f64).exp2())
 }
 
-/// Rough nanoseconds a shot.
-fn probe_cost(program: &Program, choice: &Choice) -> f64 {
-    let (Some(terms), Some(settings)) = (choice.terms, choice.probe) else {
-        return f64::INFINITY;
-    };
+/// Rough nanoseconds a shot: a pass over all terms a step, and about three
+/// draws of all components at the start.
+fn walk_cost(program: &Program, choice: &Choice) -> f64 {
+    let terms = choice.terms.unwrap_or(1) as f64;
     let active = program.peak_active() as f64;
     let steps = register_steps(program) as f64;
-    let estimates = program.inner_measurements() as f64 * settings.probes as f64;
-    let one = if terms == 1 {
-        0.0
-    } else {
-        estimates * (50.0 + 2.0 * active * active)
-    };
-    terms as f64 * (steps * (20.0 + 5.0 * active) + one)
+    terms * (steps * (30.0 + 2.0 * active) + 30.0 * program.sites().len() as f64)
 }
 
 fn register_steps(program: &Program) -> usize {

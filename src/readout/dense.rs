@@ -10,7 +10,7 @@ use rand::RngExt;
 use crate::magic::{Draw, Site, SiteKind};
 use crate::program::{MAX_SLOTS, Primitive};
 
-use super::{Diagnostics, Register, ShotRng};
+use super::{Diagnostics, I_POWERS, Register, ShotRng};
 
 /// Most active qubits this register takes.
 pub const MAX_ACTIVE: usize = 28;
@@ -29,13 +29,6 @@ pub struct Dense<'p> {
     order: Vec<u16>,
     position: [u8; MAX_SLOTS],
 }
-
-const I_POWERS: [Complex64; 4] = [
-    Complex64::new(1.0, 0.0),
-    Complex64::new(0.0, 1.0),
-    Complex64::new(-1.0, 0.0),
-    Complex64::new(0.0, -1.0),
-];
 
 impl<'p> Dense<'p> {
     /// A register for these sites, with room for `active` qubits.
@@ -143,13 +136,14 @@ impl<'p> Dense<'p> {
 }
 
 impl Register for Dense<'_> {
-    fn start(&mut self, _draw: &Draw) {
+    fn start(&mut self, _draw: &Draw, _rng: &mut ShotRng) -> bool {
         self.amplitudes.clear();
         self.amplitudes.push(Complex64::ONE);
         self.order.clear();
+        true
     }
 
-    fn plus(&mut self, slot: u16) {
+    fn plus(&mut self, slot: u16, _rng: &mut ShotRng) {
         let half = Complex64::new(std::f64::consts::FRAC_1_SQRT_2, 0.0);
         self.join(slot, half, half);
     }
@@ -162,7 +156,7 @@ impl Register for Dense<'_> {
         self.join(slot, zero, one);
     }
 
-    fn primitive(&mut self, primitive: &Primitive) {
+    fn primitive(&mut self, primitive: &Primitive, _rng: &mut ShotRng) {
         let (x, z) = (self.gather(&primitive.x), self.gather(&primitive.z));
         let scale = std::f64::consts::FRAC_1_SQRT_2;
         let sign = |index: usize| (index & z).count_ones() as usize * 2;
@@ -195,7 +189,7 @@ impl Register for Dense<'_> {
         }
     }
 
-    fn rotate(&mut self, slot: u16, site: u32, flipped: bool, draw: &Draw) {
+    fn rotate(&mut self, slot: u16, site: u32, flipped: bool, draw: &Draw, _rng: &mut ShotRng) {
         let SiteKind::Rotation(rotation) = &self.sites[site as usize].kind else {
             return;
         };
@@ -216,6 +210,8 @@ impl Register for Dense<'_> {
         }
         self.sign(mask, flip);
     }
+
+    fn skip(&mut self, _site: u32, _draw: &Draw, _rng: &mut ShotRng) {}
 
     fn controlled_z(&mut self, a: u16, b: u16) {
         let mask = self.mask(a) | self.mask(b);
@@ -255,6 +251,10 @@ impl Register for Dense<'_> {
         self.phase(slot, !flipped, Complex64::new(zero * scale, 0.0));
         self.phase(slot, flipped, Complex64::new(one * scale, 0.0));
         Some(decayed)
+    }
+
+    fn finish(&mut self, _rng: &mut ShotRng) -> bool {
+        true
     }
 
     fn diagnostics(&self) -> Diagnostics {

@@ -30,6 +30,8 @@ pub struct Block {
     pub audit: Vec<ShotAudit>,
     /// Noise events that fired, in order of shots.
     pub faults: Vec<FaultEvent>,
+    /// Why the block is shorter than asked for, if that was an error.
+    error: Option<SampleError>,
 }
 
 /// Recorded bits of some shots. Bit i of a row is recorded bit i, the registers
@@ -123,9 +125,10 @@ impl<'p> Sampler<'p> {
         self.recorded.len().div_ceil(64)
     }
 
-    /// Draws the shots of `range`, `terms` terms each, and hands finished blocks to `sink` in
-    /// order. Returns how many shots were handed on: fewer than asked for only if
-    /// `interrupt` was raised or the sink said stop by returning an error.
+    /// Draws the shots of `range` and hands finished blocks to `sink` in order.
+    /// Returns how many shots were handed on: fewer than asked for only if
+    /// `interrupt` was raised. After an error all shots before it have been handed
+    /// on.
     pub fn sample<R, E>(
         &self,
         family: Family,
@@ -141,16 +144,18 @@ impl<'p> Sampler<'p> {
     {
         let pool: Mutex<Vec<Worker<'p, R>>> = Mutex::new(Vec::new());
         let threads = rayon::current_num_threads().max(1) as u64;
-        let chunks = 4 * threads;
         let mut size = 1u64;
         let mut next = range.start;
         while next < range.end && !interrupt.raised() {
             let started = Instant::now();
             let left = range.end - next;
+            // An interruption loses what is past the first unfinished chunk: with
+            // slow shots no more than what the other threads have in hand.
+            let chunks = if size == 1 { threads } else { 4 * threads };
             let starts: Vec<u64> = (0..chunks.min(left.div_ceil(size)))
                 .map(|chunk| next + chunk * size)
                 .collect();
-            let blocks: Vec<Result<Block, SampleError>> = starts
+            let blocks: Vec<Block> = starts
                 .par_iter()
                 .map(|&first| {
                     let taken = lock(&pool).pop();
@@ -164,7 +169,6 @@ impl<'p> Sampler<'p> {
                 .collect();
             let mut done = 0;
             for (block, &first) in blocks.into_iter().zip(&starts) {
-                let block = block?;
                 let attempts = block
                     .audit
                     .iter()
@@ -173,6 +177,9 @@ impl<'p> Sampler<'p> {
                 sink(&block)?;
                 done += block.rows.shots as u64;
                 progress.advance(block.rows.shots as u64, attempts);
+                if let Some(error) = block.error {
+                    return Err(error.into());
+                }
                 if (block.rows.shots as u64) < size.min(range.end - first) {
                     return Ok(next + done - range.start);
                 }
@@ -202,7 +209,7 @@ impl<'p> Sampler<'p> {
         start: u64,
         worker: &mut Worker<'p, R>,
         interrupt: &Interrupt,
-    ) -> Result<Block, SampleError> {
+    ) -> Block {
         let rows = Rows {
             words: self.words(),
             ..Rows::default()
@@ -216,13 +223,16 @@ impl<'p> Sampler<'p> {
             if interrupt.raised() {
                 break;
             }
-            if let Some(audit) = self.shot(family, index, worker, interrupt)? {
-                self.record(index - start, audit, &worker.machine, &mut block);
-            } else {
-                break;
+            match self.shot(family, index, worker, interrupt) {
+                Ok(Some(audit)) => self.record(index - start, audit, &worker.machine, &mut block),
+                Ok(None) => break,
+                Err(error) => {
+                    block.error = Some(error);
+                    break;
+                }
             }
         }
-        Ok(block)
+        block
     }
 
     /// Draws one shot until it is accepted; none if interrupted.
@@ -248,7 +258,7 @@ impl<'p> Sampler<'p> {
                 }
                 Drawing::Companion => self.sparsifier.draw_companion(&mut rng, draw),
             }
-            if machine.attempt(register, draw, &mut rng)? {
+            if machine.attempt(register, draw, &mut rng, interrupt)? {
                 return Ok(Some(ShotAudit {
                     attempts,
                     peak_active: machine.peak_active() as u16,

@@ -9,7 +9,7 @@ use crate::noise::PauliWord;
 use crate::program::{Branch, End, FaultPlace, Outcome, Program, Reading, Segment, SetId, Step};
 use crate::readout::{Diagnostics, Register, ShotRng};
 
-use super::SampleError;
+use super::{Interrupt, SampleError};
 
 /// A noise event that fired.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -96,31 +96,34 @@ impl<'p> Machine<'p> {
     }
 
     /// Runs one attempt at a shot. False: it was not accepted and must be
-    /// drawn anew.
+    /// drawn anew, or `interrupt` was raised.
     pub fn attempt<R: Register>(
         &mut self,
         register: &mut R,
         draw: &Draw,
         rng: &mut ShotRng,
+        interrupt: &Interrupt,
     ) -> Result<bool, SampleError> {
         self.bits.fill(0);
         self.events.clear();
         self.peak_active = 0;
-        register.start(draw);
+        if !register.start(draw, rng) {
+            return Ok(false);
+        }
         let program = self.program;
         self.enter(program.first(), None)?;
-        if !self.run(program.first(), register, draw, rng) {
+        if !self.run(program.first(), register, draw, rng, interrupt) {
             return Ok(false);
         }
         let mut end = program.first().clone();
         while let End::Branch(branch) = &end.end {
             let next = self.follow(&end, branch)?;
-            if !self.run(&next, register, draw, rng) {
+            if !self.run(&next, register, draw, rng, interrupt) {
                 return Ok(false);
             }
             end = next;
         }
-        Ok(true)
+        Ok(register.finish(rng))
     }
 
     /// The segment after a branch, entered.
@@ -240,6 +243,7 @@ impl<'p> Machine<'p> {
         register: &mut R,
         draw: &Draw,
         rng: &mut ShotRng,
+        interrupt: &Interrupt,
     ) -> bool {
         // A fault acts on later readings only, so all of them are drawn first.
         for group in &segment.groups {
@@ -250,7 +254,7 @@ impl<'p> Machine<'p> {
         segment
             .steps
             .iter()
-            .all(|step| self.step(step, segment, register, draw, rng))
+            .all(|step| !interrupt.raised() && self.step(step, segment, register, draw, rng))
     }
 
     fn step<R: Register>(
@@ -288,9 +292,10 @@ impl<'p> Machine<'p> {
                 };
                 self.measured(raw, reading, flips, outcome, segment, rng);
             }
-            Step::Activate { slot } => register.plus(slot),
+            Step::Activate { slot } => register.plus(slot, rng),
+            Step::Skip { site } => register.skip(site, draw, rng),
             Step::Prepare { slot, site } => register.prepare(slot, site, draw),
-            Step::Primitive(index) => register.primitive(&segment.primitives[index as usize]),
+            Step::Primitive(index) => register.primitive(&segment.primitives[index as usize], rng),
             Step::ControlledNot { control, target } => register.controlled_not(control, target),
             Step::Rotate {
                 slot,
@@ -300,7 +305,9 @@ impl<'p> Machine<'p> {
             } => {
                 if self.holds(condition) {
                     let flipped = self.read(segment, reading);
-                    register.rotate(slot, site, flipped, draw);
+                    register.rotate(slot, site, flipped, draw, rng);
+                } else {
+                    register.skip(site, draw, rng);
                 }
             }
             Step::QuarterTurn {
@@ -322,6 +329,8 @@ impl<'p> Machine<'p> {
                 if self.holds(condition) {
                     let flipped = readings.map(|reading| self.read(segment, reading));
                     register.ccz(slots, flipped, site, draw);
+                } else {
+                    register.skip(site, draw, rng);
                 }
             }
             Step::Quadratic {

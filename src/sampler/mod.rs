@@ -13,8 +13,7 @@ pub mod random;
 #[cfg(test)]
 mod tests;
 
-use std::sync::atomic::{AtomicBool, Ordering};
-
+pub use crate::readout::Interrupt;
 pub use batch::{Block, Drawing, Rows, Sampler};
 pub use machine::{FaultEvent, ShotAudit, pauli_code};
 pub use random::Family;
@@ -38,8 +37,8 @@ pub enum SampleError {
     },
     /// A shot was drawn anew too often.
     #[error(
-        "shot {shot} was drawn anew {attempts} times without being accepted: raise --terms or \
-         lower --delta"
+        "shot {shot} was drawn anew {attempts} times without being accepted: use more terms (a \
+         larger --terms, or a smaller --delta)"
     )]
     NeverAccepted {
         /// Index of the shot.
@@ -60,25 +59,4 @@ pub struct Silent;
 
 impl Progress for Silent {
     fn advance(&mut self, _shots: u64, _attempts: u64) {}
-}
-
-/// A flag that asks running work to stop at the next shot.
-#[derive(Debug, Default)]
-pub struct Interrupt(AtomicBool);
-
-impl Interrupt {
-    /// A flag not yet raised.
-    pub const fn new() -> Self {
-        Interrupt(AtomicBool::new(false))
-    }
-
-    /// Asks the work to stop.
-    pub fn raise(&self) {
-        self.0.store(true, Ordering::Relaxed);
-    }
-
-    /// Whether the work was asked to stop.
-    pub fn raised(&self) -> bool {
-        self.0.load(Ordering::Relaxed)
-    }
 }

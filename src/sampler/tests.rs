@@ -17,7 +17,7 @@ use rand_pcg::Pcg64;
 use smallvec::smallvec;
 
 use crate::circuit::{Clifford, Pauli, Qubits};
-use crate::magic::mixing::log_extent;
+use crate::magic::mixing::{log_extent, mixing_weight};
 use crate::magic::{ScheduleOptions, Sparsifier, schedule};
 use crate::noise::{
     Instruction, Kind, NoisyCircuit, PauliChannel, PauliChoices, PauliWord, ReadoutFlip,
@@ -25,11 +25,14 @@ use crate::noise::{
 use crate::program::Program;
 use crate::readout::Register;
 use crate::readout::dense::Dense;
-use crate::readout::probe::{Probe, Settings, acceptance_cap};
+use crate::readout::probe::{self, Probe, acceptance_cap};
+use crate::readout::walk::{self, Walk};
 
 use super::{Block, Drawing, Family, Interrupt, SampleError, Sampler, Silent};
 use random_circuits::{Menu, random_circuit, random_clifford};
 use reference::reference;
+
+static NEVER: Interrupt = Interrupt::new();
 
 /// Counts of recorded bits.
 fn sample<R: Register + Send>(
@@ -39,6 +42,19 @@ fn sample<R: Register + Send>(
     shots: u64,
     seed: u64,
     make: impl Fn() -> R + Sync,
+) -> BTreeMap<u32, f64> {
+    sample_counting(program, family, drawing, shots, seed, make, &mut 0)
+}
+
+/// Counts of recorded bits; adds the number of clipped shots to `clipped`.
+fn sample_counting<R: Register + Send>(
+    program: &Program,
+    family: Family,
+    drawing: Drawing,
+    shots: u64,
+    seed: u64,
+    make: impl Fn() -> R + Sync,
+    clipped: &mut u64,
 ) -> BTreeMap<u32, f64> {
     let sparsifier = Sparsifier::new(program.sites());
     let recorded = (0..program.bits() as u32).collect();
@@ -51,6 +67,11 @@ fn sample<R: Register + Send>(
         &Interrupt::new(),
         &mut Silent,
         |block: &Block| -> Result<(), SampleError> {
+            *clipped += block
+                .audit
+                .iter()
+                .filter(|shot| shot.register.clipped)
+                .count() as u64;
             for row in &block.rows.bits {
                 *counts.entry(*row as u32).or_insert(0.0) += 1.0;
             }
@@ -141,6 +162,89 @@ fn dense_shots_follow_the_density_matrix() {
     }
 }
 
+/// P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), P_comp from half a million
+/// companion shots.
+fn mixing_law(
+    program: &Program,
+    ideal: &BTreeMap<u32, f64>,
+    terms: u64,
+    seed: u64,
+) -> BTreeMap<u32, f64> {
+    let shots = 500_000;
+    let companion = sample(
+        program,
+        Family::Companion,
+        Drawing::Companion,
+        shots,
+        seed,
+        || {
+            Probe::<1>::new(
+                program.sites(),
+                program.slots(),
+                probe::Settings::single(),
+                &NEVER,
+            )
+        },
+    );
+    let weight = mixing_weight(log_extent(program.sites()), terms);
+    let mixed = |bits: u32| companion.get(&bits).copied().unwrap_or(0.0) / shots as f64;
+    ideal
+        .iter()
+        .map(|(&bits, &chance)| (bits, (1.0 - weight) * chance + weight * mixed(bits)))
+        .filter(|entry| entry.1 > 1e-9)
+        .collect()
+}
+
+/// The basis walk follows the mixing law exactly, whatever comes between its
+/// sites: measurements, feedback, resets, conditional gates, rotations by any
+/// angle. Small k on purpose, where the companion's share is large. 40,000
+/// shots of each circuit.
+#[test]
+fn walk_shots_follow_the_mixing_law() {
+    let mut rng = Pcg64::seed_from_u64(4);
+    let (mut tested, mut clipped) = (0, 0);
+    for round in 0..80 {
+        let qubits = 2 + round % 3;
+        let menu = Menu {
+            damping: false,
+            generic_angles: round % 2 == 0,
+            branches: round % 3 == 0,
+            instructions: 14 + 4 * qubits,
+            magic: 5,
+        };
+        let circuit = random_circuit(&mut rng, qubits as u32, menu);
+        let program = compile(&circuit, qubits, round % 5 != 4);
+        let extent = log_extent(program.sites());
+        if extent < 0.05 {
+            continue;
+        }
+        tested += 1;
+        let terms = [2, 3, 5, 8][round % 4];
+        let settings = walk::Settings::new(program.sites(), terms);
+        let (slots, seed) = (program.slots(), round as u64);
+        let drawing = Drawing::Terms(terms as usize);
+        let shots = 40_000;
+        let counts = sample_counting(
+            &program,
+            Family::Shots,
+            drawing,
+            shots,
+            seed,
+            || Walk::<1>::new(program.sites(), slots, settings),
+            &mut clipped,
+        );
+        let law = mixing_law(&program, &reference(&circuit, qubits), terms, seed);
+        let found = deviation(&counts, &law);
+        assert!(
+            found < LIMIT,
+            "round {round}: {found} deviations, k = {terms}, log extent {extent}\n{circuit:#?}"
+        );
+    }
+    assert!(tested > 45, "{tested} circuits had magic");
+    // Caps are for about one in a million starts, one in a thousand ends.
+    assert!(clipped < tested * 40, "{clipped} shots were clipped");
+}
+
 /// Terms follow the mixing law P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), with
 /// P_comp sampled by companion shots: the same circuit with single terms.
 /// Circuits measure only at the end, where the law is exact but for the bias
@@ -175,41 +279,20 @@ fn probe_shots_follow_the_mixing_law() {
         let terms = [2, 3, 5, 8][round % 4];
         let slots = program.slots();
         let seed = round as u64;
-        let single = Settings {
-            probes: 1,
-            cap: 1.0,
-        };
-        let companion = sample(
-            &program,
-            Family::Companion,
-            Drawing::Companion,
-            400_000,
-            seed,
-            || Probe::<1>::new(program.sites(), slots, single),
-        );
-        let settings = Settings {
+        let settings = probe::Settings {
             probes: 64,
             cap: acceptance_cap(extent, terms, 64),
+            branches: program.branches(),
         };
-        let shots = 15_000;
         let counts = sample(
             &program,
             Family::Shots,
             Drawing::Terms(terms as usize),
-            shots,
+            15_000,
             seed,
-            || Probe::<1>::new(program.sites(), slots, settings),
+            || Probe::<1>::new(program.sites(), slots, settings, &NEVER),
         );
-        let ideal = reference(&circuit, qubits);
-        let (rest, extent) = ((terms - 1) as f64, extent.exp());
-        let law: BTreeMap<u32, f64> = ideal
-            .iter()
-            .map(|(&bits, &chance)| {
-                let mixed = companion.get(&bits).copied().unwrap_or(0.0) / 400_000.0;
-                (bits, (rest * chance + extent * mixed) / (rest + extent))
-            })
-            .filter(|entry| entry.1 > 1e-9)
-            .collect();
+        let law = mixing_law(&program, &reference(&circuit, qubits), terms, seed);
         let found = deviation(&counts, &law);
         assert!(
             found < LIMIT,
@@ -273,11 +356,12 @@ fn mean_norm_is_exact_on_thirty_sites() {
     let terms = 64;
     let sparsifier = Sparsifier::new(program.sites());
     // A cap that no estimate reaches: every draw is refused after its first one.
-    let settings = Settings {
+    let settings = probe::Settings {
         probes: 8,
         cap: 1e300,
+        branches: false,
     };
-    let mut register = Probe::<1>::new(program.sites(), program.slots(), settings);
+    let mut register = Probe::<1>::new(program.sites(), program.slots(), settings, &NEVER);
     let mut machine = super::machine::Machine::new(&program, crate::program::MAX_SLOTS, false);
     let mut draw = crate::magic::Draw::new();
     let draws = 400;
@@ -286,7 +370,7 @@ fn mean_norm_is_exact_on_thirty_sites() {
         let mut rng = super::random::generator(5, Family::Shots, index);
         sparsifier.draw_members(&mut rng, &mut draw);
         sparsifier.draw_terms(terms, &mut rng, &mut draw);
-        let accepted = machine.attempt(&mut register, &draw, &mut rng);
+        let accepted = machine.attempt(&mut register, &draw, &mut rng, &NEVER);
         assert_eq!(accepted, Ok(false));
         let norm = register
             .diagnostics()
@@ -306,4 +390,79 @@ fn mean_norm_is_exact_on_thirty_sites() {
         error < 0.1 * expected,
         "the test could not see an error of half the mean"
     );
+}
+
+/// Paths that differ in what they execute or measure must keep their weights:
+/// a coin decides whether a magic qubit is measured, and whether a CCZ acts.
+/// Both probe and walk, 60,000 shots: a shot kept too often on one path by 1 %
+/// moves the coin by five standard deviations.
+#[test]
+fn conditional_measurements_and_gates_keep_the_weight_of_paths() {
+    let h = |q| Kind::Clifford(Clifford::H(q));
+    let t = |q| Kind::Rotation {
+        axis: smallvec![(q, Pauli::Z)],
+        angle: std::f64::consts::FRAC_PI_4,
+    };
+    let measure = |qubit, bit| Kind::Measure {
+        qubit,
+        bit: Some(bit),
+        flip: ReadoutFlip::default(),
+    };
+    let plain = |kind| Instruction {
+        kind,
+        condition: None,
+        operation: 0,
+    };
+    let conditional = |kind| Instruction {
+        kind,
+        condition: Some(0),
+        operation: 0,
+    };
+    let mut measured: Vec<Instruction> = [h(0), measure(0, 0), h(1), t(1), h(1)].map(plain).into();
+    measured.push(conditional(measure(1, 1)));
+    let mut acted: Vec<Instruction> = [h(0), h(1), h(2), h(3), t(1), t(2), t(3), measure(0, 0)]
+        .map(plain)
+        .into();
+    acted.push(conditional(Kind::Ccz([1, 2, 3])));
+    acted.extend(
+        [
+            h(1),
+            h(2),
+            h(3),
+            measure(1, 1),
+            measure(2, 2),
+            measure(3, 3),
+        ]
+        .map(plain),
+    );
+    for (qubits, instructions) in [(2, measured), (4, acted)] {
+        let circuit = NoisyCircuit {
+            instructions,
+            warnings: Vec::new(),
+        };
+        let program = compile(&circuit, qubits, true);
+        let (terms, slots) = (4, program.slots());
+        let law = mixing_law(&program, &reference(&circuit, qubits), terms, 9);
+        let drawing = Drawing::Terms(terms as usize);
+        let settings = probe::Settings {
+            probes: 64,
+            cap: acceptance_cap(log_extent(program.sites()), terms, 64),
+            branches: program.branches(),
+        };
+        let probed = sample(&program, Family::Shots, drawing, 60_000, 5, || {
+            Probe::<1>::new(program.sites(), slots, settings, &NEVER)
+        });
+        assert!(
+            deviation(&probed, &law) < LIMIT,
+            "probe: {probed:?} for {law:?}"
+        );
+        let settings = walk::Settings::new(program.sites(), terms);
+        let walked = sample(&program, Family::Shots, drawing, 60_000, 6, || {
+            Walk::<1>::new(program.sites(), slots, settings)
+        });
+        assert!(
+            deviation(&walked, &law) < LIMIT,
+            "walk: {walked:?} for {law:?}"
+        );
+    }
 }

@@ -172,6 +172,15 @@ impl<const W: usize> Terms<W> {
         });
     }
 
+    /// Controlled Z between two slots.
+    pub fn controlled_z(&mut self, a: usize, b: usize) {
+        let phase = QuadraticPhase {
+            cz: [true, false, false],
+            ..QuadraticPhase::default()
+        };
+        self.quadratic([a, b, b], |_| phase);
+    }
+
     /// Multiplies by the number chosen for the label. Powers of √2 collected
     /// so far are folded into the weights, so that normalising from time to
     /// time keeps them in range.
