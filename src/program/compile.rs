@@ -15,6 +15,7 @@ use super::axis::{Gathered, ones_and};
 use super::faults::{ChoiceTable, FaultGroup, FaultPlace};
 use super::flips::{self, Event, SetId};
 use super::step::{AffineInput, Outcome, Primitive, Reading, Step};
+use super::turns::quarter_turns_of;
 use super::{Branch, CompileError, End, Layout, Segment, Start};
 
 /// What every segment of a program is compiled from.
@@ -53,6 +54,8 @@ pub(super) struct Compiler<'a> {
     met: Vec<u32>,
     stepped: Vec<bool>,
     end: Option<Box<Branch>>,
+    /// Whether this is not the first segment.
+    later: bool,
 }
 
 /// Compiles the segment that starts at `start` in `layout`. Also says of every
@@ -62,7 +65,7 @@ pub(super) fn segment(
     start: Start,
     layout: Layout,
 ) -> Result<(Segment, Vec<bool>), CompileError> {
-    let mut compiler = Compiler::new(context, layout);
+    let mut compiler = Compiler::new(context, layout, start != Start::default());
     let instructions = &context.schedule.instructions;
     for (index, instruction) in instructions.iter().enumerate().skip(start.instruction) {
         let forced = start.taken && index == start.instruction;
@@ -102,41 +105,8 @@ fn changes_structure(kind: &Kind) -> bool {
     )
 }
 
-/// A Clifford gate as quarter turns and a Pauli, up to a global phase:
-/// S = turn(Z), H = X·turn(Y), CX = turn(Z)·turn(X)·turn(ZX)⁻¹ and so on;
-/// turn(P)⁻¹ = P·turn(P).
-pub(super) fn quarter_turns_of(gate: &Clifford) -> (Vec<PauliProduct>, PauliProduct) {
-    let one = |qubit, letter| -> PauliProduct { smallvec![(qubit, letter)] };
-    let two = |a, first, b, second| -> PauliProduct { smallvec![(a, first), (b, second)] };
-    match *gate {
-        Clifford::X(q) => (vec![], one(q, Pauli::X)),
-        Clifford::Y(q) => (vec![], one(q, Pauli::Y)),
-        Clifford::Z(q) => (vec![], one(q, Pauli::Z)),
-        Clifford::H(q) => (vec![one(q, Pauli::Y)], one(q, Pauli::X)),
-        Clifford::S(q) => (vec![one(q, Pauli::Z)], smallvec![]),
-        Clifford::Sdg(q) => (vec![one(q, Pauli::Z)], one(q, Pauli::Z)),
-        Clifford::Cx(control, target) => {
-            let both = two(control, Pauli::Z, target, Pauli::X);
-            let turns = vec![one(control, Pauli::Z), one(target, Pauli::X), both.clone()];
-            (turns, both)
-        }
-        Clifford::Cz(a, b) => {
-            let both = two(a, Pauli::Z, b, Pauli::Z);
-            (vec![one(a, Pauli::Z), one(b, Pauli::Z), both.clone()], both)
-        }
-        Clifford::Swap(a, b) => {
-            let turns = [Pauli::X, Pauli::Y, Pauli::Z]
-                .into_iter()
-                .map(|letter| two(a, letter, b, letter))
-                .collect();
-            (turns, smallvec![])
-        }
-        Clifford::QuarterTurn(ref axis) => (vec![axis.clone()], smallvec![]),
-    }
-}
-
 impl<'a> Compiler<'a> {
-    fn new(context: &'a Context<'a>, layout: Layout) -> Self {
+    fn new(context: &'a Context<'a>, layout: Layout, later: bool) -> Self {
         let qubits = layout.frame.qubits();
         let words = words_for(qubits);
         let (mut active, mut inactive) = (vec![0; words], vec![0; words]);
@@ -177,6 +147,7 @@ impl<'a> Compiler<'a> {
             met: Vec::new(),
             stepped: vec![false; context.kept.len()],
             end: None,
+            later,
         }
     }
 
@@ -195,6 +166,9 @@ impl<'a> Compiler<'a> {
             Kind::Prepare { site, qubit } => {
                 self.met.push(*site);
                 self.stepped[*site as usize] = true;
+                // A Pauli on the fresh qubit before this can only be Z, which does
+                // nothing to |0⟩; it must not reach the state that comes now.
+                self.events.push(Event::Clear(*qubit));
                 let slot = self.place_fresh(*qubit)?;
                 if let Some(site) = self.context.kept[*site as usize] {
                     self.steps.push(Step::Prepare { slot, site });
@@ -274,6 +248,7 @@ impl<'a> Compiler<'a> {
     ) -> Result<(), CompileError> {
         // A rotation about an axis of known value is a global phase.
         let Gathered::Column { column, negative } = self.gather(axis, &[])? else {
+            self.skip(site);
             return Ok(());
         };
         let Some(kept) = self.context.kept[site as usize] else {
@@ -320,6 +295,7 @@ impl<'a> Compiler<'a> {
             });
             return Ok(());
         }
+        self.skip(site);
         let position = |column: &usize| {
             reserved
                 .iter()
@@ -345,6 +321,16 @@ impl<'a> Compiler<'a> {
             condition,
         });
         Ok(())
+    }
+
+    /// A site without effect here. In the first segment it is without effect in
+    /// every shot and is left out of the program; later it has to be counted.
+    fn skip(&mut self, site: u32) {
+        if self.later
+            && let Some(site) = self.context.kept[site as usize]
+        {
+            self.steps.push(Step::Skip { site });
+        }
     }
 
     /// A Clifford gate under a condition: register steps and a flip.
@@ -526,10 +512,10 @@ impl<'a> Compiler<'a> {
             condition,
             carried,
             instruction,
-            layout: Layout {
+            layout: Arc::new(Layout {
                 frame,
                 slots: self.slots.clone(),
-            },
+            }),
             next: Default::default(),
         }));
     }
@@ -546,6 +532,7 @@ impl<'a> Compiler<'a> {
         )
         .ok_or(CompileError::TooManyFlips {
             places: self.places.len(),
+            outcomes: self.triggers as usize,
         })?;
         let mut steps = self.steps;
         for step in &mut steps {

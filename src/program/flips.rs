@@ -44,6 +44,9 @@ pub struct SetArena {
     bits: Vec<u64>,
 }
 
+/// Most members that may be merged on the way back: some ten seconds.
+const MAX_MERGED: u64 = 5_000_000_000;
+
 /// Where a set is.
 #[derive(Debug, Clone, Copy)]
 enum Stored {
@@ -140,6 +143,8 @@ pub(super) struct Flips {
 struct Walk {
     sets: Vec<[Vec<u32>; 2]>,
     scratch: Vec<u32>,
+    /// Members merged so far.
+    merged: u64,
 }
 
 /// Symmetric difference of two sorted lists into a third.
@@ -169,6 +174,7 @@ fn difference(left: &[u32], right: &[u32], into: &mut Vec<u32>) {
 impl Walk {
     fn add(&mut self, to: (u32, usize), items: &[u32]) {
         let target = &mut self.sets[to.0 as usize][to.1];
+        self.merged += (target.len() + items.len()) as u64;
         difference(target, items, &mut self.scratch);
         std::mem::swap(target, &mut self.scratch);
     }
@@ -252,6 +258,7 @@ pub(super) fn backward(
     let mut walk = Walk {
         sets: vec![[Vec::new(), Vec::new()]; qubits],
         scratch: Vec::new(),
+        merged: 0,
     };
     if let Some(base) = exit {
         for (qubit, sets) in walk.sets.iter_mut().enumerate() {
@@ -268,7 +275,7 @@ pub(super) fn backward(
         entry: Vec::new(),
     };
     for event in events.iter().rev() {
-        if flips.sets.bytes() > MAX_BYTES {
+        if flips.sets.bytes() > MAX_BYTES || walk.merged > MAX_MERGED {
             return None;
         }
         match event {

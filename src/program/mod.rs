@@ -19,8 +19,10 @@ mod compile;
 mod faults;
 mod flips;
 mod step;
+mod turns;
 
 use std::collections::HashMap;
+use std::hash::{DefaultHasher, Hash, Hasher};
 use std::sync::{Arc, Mutex, OnceLock};
 
 use crate::clifford::frame::Frame;
@@ -33,8 +35,8 @@ pub use step::{AffineInput, Outcome, Primitive, Reading, Step};
 /// Slots a register may have at most.
 pub const MAX_SLOTS: usize = 256;
 
-/// How many segments are kept for reuse; past that they are compiled anew.
-const MAX_KEPT_SEGMENTS: usize = 4096;
+/// Bytes of segments that are kept for reuse; past that they are compiled anew.
+const MAX_KEPT_BYTES: usize = 1 << 30;
 
 /// Why a schedule cannot be compiled.
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
@@ -50,12 +52,15 @@ pub enum CompileError {
     },
     /// The flip sets take too much memory.
     #[error(
-        "which measurements each of the {places} noisy places can flip takes more than 4 GiB to \
-         store: leave noise out where it does not matter, or split the circuit"
+        "which readings each of the {places} noisy places and {outcomes} random outcomes can flip \
+         takes more than 4 GiB or too long to find: use fewer measurements whose outcomes depend \
+         on one another, or split the circuit"
     )]
     TooManyFlips {
         /// Number of places where a fault may fire.
         places: usize,
+        /// Number of outcomes and events that flip later readings.
+        outcomes: usize,
     },
 }
 
@@ -73,18 +78,45 @@ pub struct Program {
     /// Index into `locations` of each instruction that has one.
     location_of: HashMap<usize, u32>,
     first: Arc<Segment>,
-    segments: Mutex<HashMap<SegmentKey, Arc<Segment>>>,
+    segments: Mutex<Kept>,
+}
+
+/// Segments kept for reuse.
+#[derive(Debug, Default)]
+struct Kept {
+    by_start: HashMap<SegmentKey, Arc<Segment>>,
+    bytes: usize,
 }
 
 /// Where a segment starts: everything its compilation depends on.
-#[derive(Debug, Clone, PartialEq, Eq, Hash)]
+#[derive(Debug, Clone, PartialEq, Eq)]
 struct SegmentKey {
+    /// Hash of the rest, made before the table is locked.
+    hash: u64,
     start: Start,
-    layout: Layout,
+    layout: Arc<Layout>,
+}
+
+impl std::hash::Hash for SegmentKey {
+    fn hash<H: Hasher>(&self, state: &mut H) {
+        state.write_u64(self.hash);
+    }
+}
+
+impl SegmentKey {
+    fn new(start: Start, layout: &Arc<Layout>) -> Self {
+        let mut hasher = DefaultHasher::new();
+        (start, layout).hash(&mut hasher);
+        SegmentKey {
+            hash: hasher.finish(),
+            start,
+            layout: layout.clone(),
+        }
+    }
 }
 
 /// First instruction of a segment.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, Default)]
 struct Start {
     /// Index of the instruction.
     instruction: usize,
@@ -145,7 +177,7 @@ pub struct Branch {
     /// Pauli of the reference frame at the end, by qubit (X part, Z part).
     pub carried: Vec<(bool, bool)>,
     instruction: usize,
-    layout: Layout,
+    layout: Arc<Layout>,
     next: [OnceLock<Arc<Segment>>; 2],
 }
 
@@ -193,7 +225,7 @@ impl Program {
             locations,
             location_of,
             first: Arc::new(first),
-            segments: Mutex::new(HashMap::new()),
+            segments: Mutex::new(Kept::default()),
         })
     }
 
@@ -287,7 +319,7 @@ impl Program {
             .map(
                 |instruction| match (&instruction.kind, instruction.condition) {
                     (Kind::Damping { .. }, _) => 1,
-                    (Kind::Clifford(gate), Some(_)) => compile::quarter_turns_of(gate).0.len(),
+                    (Kind::Clifford(gate), Some(_)) => turns::quarter_turns_of(gate).0.len(),
                     _ => 0,
                 },
             )
@@ -318,11 +350,8 @@ impl Program {
             return Ok(segment.clone());
         }
         let instruction = branch.instruction + usize::from(!taken);
-        let key = SegmentKey {
-            start: Start { instruction, taken },
-            layout: branch.layout.clone(),
-        };
-        let known = self.lock().get(&key).cloned();
+        let key = SegmentKey::new(Start { instruction, taken }, &branch.layout);
+        let known = self.lock().by_start.get(&key).cloned();
         let segment = match known {
             Some(segment) => segment,
             None => {
@@ -331,13 +360,16 @@ impl Program {
                     location_of: &self.location_of,
                     kept: &self.kept,
                 };
-                let (segment, _) = compile::segment(&context, key.start, key.layout.clone())?;
+                let layout = Layout::clone(&key.layout);
+                let (segment, _) = compile::segment(&context, key.start, layout)?;
                 let segment = Arc::new(segment);
-                let mut segments = self.lock();
-                if segments.len() >= MAX_KEPT_SEGMENTS {
+                let bytes = segment.bytes();
+                let mut kept = self.lock();
+                if kept.bytes + bytes > MAX_KEPT_BYTES {
                     return Ok(segment);
                 }
-                segments.entry(key).or_insert(segment).clone()
+                kept.bytes += bytes;
+                kept.by_start.entry(key).or_insert(segment).clone()
             }
         };
         Ok(branch.next[usize::from(taken)]
@@ -345,7 +377,7 @@ impl Program {
             .clone())
     }
 
-    fn lock(&self) -> std::sync::MutexGuard<'_, HashMap<SegmentKey, Arc<Segment>>> {
+    fn lock(&self) -> std::sync::MutexGuard<'_, Kept> {
         self.segments
             .lock()
             .unwrap_or_else(|poisoned| poisoned.into_inner())
@@ -353,6 +385,26 @@ impl Program {
 }
 
 impl Segment {
+    /// Roughly the bytes it takes, the frame at its end included.
+    fn bytes(&self) -> usize {
+        let frame = match &self.end {
+            End::Finished => 0,
+            End::Branch(branch) => branch.layout.frame.bytes(),
+        };
+        let places: usize = self
+            .places
+            .iter()
+            .map(|place| 64 + 8 * place.sets.len())
+            .sum();
+        frame
+            + places
+            + self.sets.bytes()
+            + self.steps.len() * size_of::<Step>()
+            + self.primitives.len() * size_of::<Primitive>()
+            + self.entry.len() * size_of::<[SetId; 2]>()
+            + 16 * self.reference.len()
+    }
+
     /// Replaces schedule indices of sites by indices of kept sites.
     fn renumber_sites(&mut self, kept: &[Option<u32>]) {
         for step in &mut self.steps {

@@ -95,6 +95,11 @@ pub enum Step {
         /// The bit that must be 1.
         condition: Option<u32>,
     },
+    /// A site that has no effect on this path but counts in the extent.
+    Skip {
+        /// The site.
+        site: u32,
+    },
     /// exp(−iπZ/4) on a slot, its sign the reading, under a condition.
     QuarterTurn {
         /// The slot.
@@ -190,9 +195,10 @@ impl Step {
     /// The site the step uses, if any.
     pub(super) fn site_mut(&mut self) -> Option<&mut u32> {
         match self {
-            Step::Prepare { site, .. } | Step::Rotate { site, .. } | Step::Ccz { site, .. } => {
-                Some(site)
-            }
+            Step::Skip { site }
+            | Step::Prepare { site, .. }
+            | Step::Rotate { site, .. }
+            | Step::Ccz { site, .. } => Some(site),
             _ => None,
         }
     }
