@@ -50,6 +50,17 @@ enum CommandError {
     /// any work.
     #[error(transparent)]
     Output(StoreError),
+    /// Drawing failed after some shots.
+    #[error("{cause}; the {shots} shots before it were written")]
+    Stopped {
+        /// Why.
+        cause: SampleError,
+        /// How many shots are in the file.
+        shots: u64,
+    },
+    /// The summary could not be printed.
+    #[error("cannot print the summary: {0}")]
+    Print(std::io::Error),
     /// Ctrl-C.
     #[error("{0}")]
     Interrupted(String),
@@ -63,7 +74,10 @@ impl CommandError {
             | CommandError::Compile(_)
             | CommandError::Choice(_)
             | CommandError::Output(_) => 2,
-            CommandError::Sample(_) | CommandError::Store(_) => 1,
+            CommandError::Sample(_)
+            | CommandError::Store(_)
+            | CommandError::Stopped { .. }
+            | CommandError::Print(_) => 1,
             CommandError::Interrupted(_) => 130,
         }
     }

@@ -74,7 +74,7 @@ pub(super) struct Run {
     pub companion: Option<u64>,
 
     /// Number of threads [default: all cores]
-    #[arg(long, value_name = "T", value_parser = clap::value_parser!(u16).range(1..=4096))]
+    #[arg(long, value_name = "T", value_parser = clap::value_parser!(u16).range(1..=256))]
     pub threads: Option<u16>,
 
     /// Draw only part I of N of the shots
@@ -129,6 +129,8 @@ pub(super) struct Show {
 pub(super) enum ReadoutOption {
     /// The cheaper one for this circuit
     Auto,
+    /// Stabiliser terms and a sample that walks with the circuit
+    Walk,
     /// Stabiliser terms with fast norm estimation
     Probe,
     /// Exact amplitudes of the active qubits (at most 28 of them)

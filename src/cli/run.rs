@@ -1,5 +1,7 @@
 //! `run`: draw shots of a circuit into a result file.
 
+use std::cell::Cell;
+use std::path::Path;
 use std::time::{Duration, Instant};
 
 use crate::circuit::Register as BitRegister;
@@ -10,6 +12,7 @@ use crate::readout::Register;
 use crate::readout::choice::{self, Choice, Readout, TermCount, Wish};
 use crate::readout::dense::Dense;
 use crate::readout::probe::{Probe, Settings};
+use crate::readout::walk::{self, Walk};
 use crate::report::Summary;
 use crate::sampler::{Block, Drawing, Family, Interrupt, Sampler};
 use crate::store::{
@@ -31,6 +34,17 @@ pub(super) fn run(options: &Run) -> Result<(), CommandError> {
             path: options.out.clone(),
         }));
     }
+    for input in [Some(&options.circuit), options.noise.as_ref()]
+        .into_iter()
+        .flatten()
+    {
+        if same_file(input, &options.out) {
+            return Err(CommandError::Usage(format!(
+                "--out {} is an input file of this run; choose another name",
+                options.out.display()
+            )));
+        }
+    }
     let input = input::load(&Reading {
         circuit: &options.circuit,
         noise: options.noise.as_deref(),
@@ -44,6 +58,7 @@ pub(super) fn run(options: &Run) -> Result<(), CommandError> {
         readout: match options.readout {
             ReadoutOption::Auto => None,
             ReadoutOption::Probe => Some(Readout::Probe),
+            ReadoutOption::Walk => Some(Readout::Walk),
             ReadoutOption::Dense => Some(Readout::Dense),
         },
         delta: options.delta,
@@ -62,9 +77,17 @@ pub(super) fn run(options: &Run) -> Result<(), CommandError> {
     plan.draw(options)?;
     if !options.quiet {
         let file = ShotFile::open(&options.out)?;
-        super::show::print(&Summary::from_file(&file)?, options.json);
+        super::show::print(&Summary::from_file(&file)?, options.json)?;
     }
     plan.ending()
+}
+
+/// Whether two paths lead to one existing file.
+fn same_file(left: &Path, right: &Path) -> bool {
+    match (left.canonicalize(), right.canonicalize()) {
+        (Ok(left), Ok(right)) => left == right,
+        _ => false,
+    }
 }
 
 /// One run, decided.
@@ -77,13 +100,8 @@ struct Plan<'a> {
     /// Indices of the shots and of the companion shots.
     shots: std::ops::Range<u64>,
     companion: std::ops::Range<u64>,
-    finished: std::cell::Cell<u64>,
-}
-
-/// Part I of N of the indices below `count`.
-fn share(count: u64, part: Part) -> std::ops::Range<u64> {
-    let end = |index: u64| (u128::from(count) * u128::from(index) / u128::from(part.count)) as u64;
-    end(part.index - 1)..end(part.index)
+    finished: Cell<u64>,
+    clipped: Cell<u64>,
 }
 
 impl<'a> Plan<'a> {
@@ -177,9 +195,10 @@ impl<'a> Plan<'a> {
             header,
             recorded,
             seed,
-            shots: share(options.shots, part),
-            companion: share(companion, part),
-            finished: std::cell::Cell::new(0),
+            shots: part.shots(options.shots),
+            companion: part.shots(companion),
+            finished: Cell::new(0),
+            clipped: Cell::new(0),
         })
     }
 
@@ -195,9 +214,23 @@ impl<'a> Plan<'a> {
         let program = &self.input.program;
         // Companion shots come first: they are cheap, and an interrupted run
         // can then be corrected as well.
-        self.draw_companion(program, options, &mut writer)?;
-        let finished = self.draw_shots(program, options, &mut writer)?;
-        writer.finish(finished)?;
+        let drawn = self
+            .draw_companion(program, options, &mut writer)
+            .and_then(|()| self.draw_shots(program, options, &mut writer));
+        let finished = Finished {
+            clipped: self.clipped.get(),
+        };
+        match drawn {
+            Ok(()) => writer.finish(finished)?,
+            Err(CommandError::Sample(cause)) if self.finished.get() > 0 => {
+                writer.finish(finished)?;
+                return Err(CommandError::Stopped {
+                    cause,
+                    shots: self.finished.get(),
+                });
+            }
+            Err(error) => return Err(error),
+        }
         Ok(())
     }
 
@@ -211,10 +244,7 @@ impl<'a> Plan<'a> {
             return Ok(());
         }
         let sparsifier = Sparsifier::new(program.sites());
-        let single = Settings {
-            probes: 1,
-            cap: 1.0,
-        };
+        let single = Settings::single();
         let write = |block: &Block| Ok(writer.append_companion(&block.rows)?);
         let mut progress = Shown::new("companion", self.companion_count(), options.quiet);
         let sampler = self.sampler(program, &sparsifier, MAX_SLOTS, false, Drawing::Companion);
@@ -262,11 +292,10 @@ impl<'a> Plan<'a> {
         program: &Program,
         options: &Run,
         writer: &mut Writer,
-    ) -> Result<Finished, CommandError> {
+    ) -> Result<(), CommandError> {
         let sparsifier = Sparsifier::new(program.sites());
-        let mut clipped = 0;
         let write = |block: &Block| -> Result<(), CommandError> {
-            clipped += block
+            let clipped = block
                 .audit
                 .iter()
                 .filter(|shot| shot.register.clipped)
@@ -276,6 +305,9 @@ impl<'a> Plan<'a> {
             if options.faults {
                 writer.append_faults(&block.faults)?;
             }
+            self.clipped.set(self.clipped.get() + clipped);
+            self.finished
+                .set(self.finished.get() + block.rows.shots as u64);
             Ok(())
         };
         let total = self.shots.end - self.shots.start;
@@ -299,13 +331,13 @@ impl<'a> Plan<'a> {
             sink: write,
         };
         let active = program.first().peak_active;
-        let done = match self.choice.probe {
-            None => sample.with(|| Dense::new(program.sites(), active))?,
-            Some(settings) => with_probe(program, settings, sample)?,
+        match (self.choice.readout, self.choice.probe, self.choice.terms) {
+            (Readout::Probe, Some(settings), _) => with_probe(program, settings, sample)?,
+            (Readout::Walk, _, Some(terms)) => with_walk(program, terms, sample)?,
+            _ => sample.with(|| Dense::new(program.sites(), active))?,
         };
         progress.finish();
-        self.finished.set(done);
-        Ok(Finished { clipped })
+        Ok(())
     }
 
     /// What to say at the end: an interruption is an error of its own.
@@ -350,9 +382,24 @@ fn with_probe<S: FnMut(&Block) -> Result<(), CommandError>>(
 ) -> Result<u64, CommandError> {
     let (sites, slots) = (program.sites(), program.slots());
     match slots {
-        0..=64 => sample.with(|| Probe::<1>::new(sites, slots, settings)),
-        65..=128 => sample.with(|| Probe::<2>::new(sites, slots, settings)),
-        _ => sample.with(|| Probe::<4>::new(sites, slots, settings)),
+        0..=64 => sample.with(|| Probe::<1>::new(sites, slots, settings, &INTERRUPT)),
+        65..=128 => sample.with(|| Probe::<2>::new(sites, slots, settings, &INTERRUPT)),
+        _ => sample.with(|| Probe::<4>::new(sites, slots, settings, &INTERRUPT)),
+    }
+}
+
+/// The same for the walk.
+fn with_walk<S: FnMut(&Block) -> Result<(), CommandError>>(
+    program: &Program,
+    terms: u64,
+    sample: Sample<'_, '_, S>,
+) -> Result<u64, CommandError> {
+    let (sites, slots) = (program.sites(), program.slots());
+    let settings = walk::Settings::new(sites, terms);
+    match slots {
+        0..=64 => sample.with(|| Walk::<1>::new(sites, slots, settings)),
+        65..=128 => sample.with(|| Walk::<2>::new(sites, slots, settings)),
+        _ => sample.with(|| Walk::<4>::new(sites, slots, settings)),
     }
 }
 
@@ -439,7 +486,9 @@ fn catch_interrupts() -> Result<(), CommandError> {
         None => {
             first = Some(Instant::now());
             INTERRUPT.raise();
-            message::note("stopping at the next shot; finished shots are kept");
+            message::note(
+                "stopping; finished shots are kept (a second Ctrl-C ends at once and loses them)",
+            );
         }
         Some(first) if first.elapsed() < SAME_REQUEST => {}
         Some(_) => std::process::exit(130),

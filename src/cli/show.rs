@@ -9,17 +9,20 @@ use super::options::Show;
 /// Prints the summary of a result file.
 pub(super) fn show(options: &Show) -> Result<(), CommandError> {
     let file = ShotFile::open(&options.file).map_err(CommandError::Output)?;
-    print(&Summary::from_file(&file)?, options.json);
-    Ok(())
+    print(&Summary::from_file(&file)?, options.json)
 }
 
 /// Prints a summary on stdout. A closed pipe is no error.
-pub(super) fn print(summary: &Summary, json: bool) {
-    use std::io::Write;
+pub(super) fn print(summary: &Summary, json: bool) -> Result<(), CommandError> {
+    use std::io::{ErrorKind, Write};
     let text = if json {
         summary.to_json()
     } else {
         summary.to_string()
     };
-    let _ = writeln!(std::io::stdout(), "{}", text.trim_end());
+    let mut stdout = std::io::stdout();
+    match writeln!(stdout, "{}", text.trim_end()).and_then(|()| stdout.flush()) {
+        Err(error) if error.kind() != ErrorKind::BrokenPipe => Err(CommandError::Print(error)),
+        _ => Ok(()),
+    }
 }

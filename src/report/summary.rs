@@ -4,7 +4,8 @@ use serde::Serialize;
 
 use super::estimate::{Estimate, Sample, corrected};
 use super::tally::{Tally, Words};
-use crate::store::{Family, Header, Part, RegisterHeader, ShotFile, SiteRow, StoreError};
+use crate::sampler::Family;
+use crate::store::{Header, Part, RegisterHeader, ShotFile, SiteRow, StoreError};
 
 /// Most outcomes of a register that are listed.
 pub(super) const MOST_OUTCOMES: usize = 8;

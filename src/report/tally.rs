@@ -3,8 +3,8 @@
 use std::collections::HashMap;
 
 use super::Sample;
-use crate::sampler::Rows;
-use crate::store::{Family, Header, RegisterHeader, ShotFile, StoreError};
+use crate::sampler::{Family, Rows};
+use crate::store::{Header, RegisterHeader, ShotFile, StoreError};
 
 /// Counts of one register.
 #[derive(Debug, Clone, Default)]

@@ -77,14 +77,14 @@ pub enum StoreError {
         path: PathBuf,
     },
     /// The file to read is not HDF5.
-    #[error("{} is not an HDF5 file; expected a result written by `run` or `join`", path.display())]
+    #[error("{} is not an HDF5 file; expected a result written by `run`", path.display())]
     NotHdf5 {
         /// The path.
         path: PathBuf,
     },
     /// The file is HDF5 but not a result of this program.
     #[error(
-        "{} is not a shot record: {found}; expected a result written by `run` or `join`",
+        "{} is not a shot record: {found}; expected a result written by `run`",
         path.display()
     )]
     NotShotRecord {

@@ -41,7 +41,8 @@ pub struct Header {
     pub log_extent: f64,
     /// Number of stabiliser terms k; absent for the dense read-out.
     pub terms: Option<u64>,
-    /// λ = ξ/(k − 1 + ξ), 0 for the dense read-out; see [`mixing_weight`].
+    /// λ = ξ/(k − 1 + ξ), 0 for the dense read-out; see
+    /// [`crate::magic::mixing::mixing_weight`].
     pub mixing_weight: f64,
     /// Shots asked for in the whole run, over all parts.
     pub shots_total: u64,
@@ -131,13 +132,6 @@ pub struct LocationRow {
     pub probability: f64,
 }
 
-/// λ = ξ/(k − 1 + ξ), the weight of the companion circuit in the distribution
-/// of shots drawn with `terms` = k stabiliser terms of total extent ξ =
-/// exp(`log_extent`), for ξ of any size.
-pub fn mixing_weight(log_extent: f64, terms: u64) -> f64 {
-    1.0 / (1.0 + (terms.max(1) - 1) as f64 * (-log_extent).exp())
-}
-
 impl Header {
     /// Bits of one shot, all registers together.
     pub fn bits(&self) -> usize {
@@ -195,14 +189,5 @@ mod tests {
                 assert_eq!(next, total);
             }
         }
-    }
-
-    /// ξ/(k − 1 + ξ) by hand: ξ = 4, k = 5 gives 4/8.
-    #[test]
-    fn mixing_weight_follows_its_formula() {
-        assert!((mixing_weight(4f64.ln(), 5) - 0.5).abs() < 1e-15);
-        assert_eq!(mixing_weight(0.0, 1), 1.0);
-        assert_eq!(mixing_weight(800.0, 1000), 1.0);
-        assert!((mixing_weight(0.0, 10) - 0.1).abs() < 1e-15);
     }
 }

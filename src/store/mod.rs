@@ -36,8 +36,6 @@ mod writer;
 
 pub use block::AuditBlock;
 pub use error::StoreError;
-pub use header::{
-    FORMAT, FORMAT_VERSION, Header, LocationRow, Part, RegisterHeader, SiteRow, mixing_weight,
-};
-pub use reader::{Blocks, Family, ShotFile};
+pub use header::{FORMAT, FORMAT_VERSION, Header, LocationRow, Part, RegisterHeader, SiteRow};
+pub use reader::{Blocks, ShotFile};
 pub use writer::{Finished, Writer, WriterOptions};

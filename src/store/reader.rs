@@ -12,16 +12,10 @@ use ndarray::{Array1, Array2, s};
 use super::layout::{self, LocationRecord, SiteRecord, plain};
 use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header};
 use super::{Part, RegisterHeader, StoreError, block};
-use crate::sampler::{FaultEvent, Rows};
+use crate::sampler::{Family, FaultEvent, Rows};
 
-/// Which of the two sets of rows.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Family {
-    /// The shots of the noisy circuit.
-    Shots,
-    /// The companion shots.
-    Companion,
-}
+/// Most bits a register may have; far more than a circuit can declare.
+const MOST_BITS: usize = 1 << 24;
 
 /// A result file opened for reading.
 #[derive(Debug)]
@@ -393,6 +387,9 @@ impl Source<'_> {
             let [_, width] = dataset.shape()[..] else {
                 return Err(wrong("does not have two dimensions"));
             };
+            if width > MOST_BITS {
+                return Err(wrong("is wider than any register can be"));
+            }
             let is_bool = dataset.dtype().is_ok_and(|found| found.is::<bool>());
             if !is_bool {
                 return Err(wrong("does not hold the enumeration FALSE, TRUE"));
