@@ -126,7 +126,7 @@ out (record, 3 bits)      as drawn                corrected
 
 ± is one standard error; (< or >) is a 95 % limit.
 Outcomes are written with bit 0 on the right.
-Corrected: the companion's share λ taken out; unbiased.
+Corrected: the companion's share λ taken out.
 ";
     assert_eq!(text, expected);
     assert!(text.lines().all(|line| line.chars().count() <= 80));

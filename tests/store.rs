@@ -2,10 +2,10 @@
 
 use std::path::Path;
 
-use shottower::sampler::{FaultEvent, Rows};
+use shottower::sampler::{Family, FaultEvent, Rows};
 use shottower::store::{
-    AuditBlock, Family, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow,
-    StoreError, Writer, WriterOptions,
+    AuditBlock, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError,
+    Writer, WriterOptions,
 };
 
 const ALL: WriterOptions = WriterOptions {

@@ -88,6 +88,20 @@ def mixture_p_value(counts, companion_counts, ideal, mixing_weight):
     return float(stats.chi2.sf(statistic, len(law) - 1))
 
 
+def admixture(counts, companion_counts, ideal):
+    """(share, standard error) of the companion's law in the law of the counts:
+    least squares of n/N = ideal + share·(companion − ideal)."""
+    counts, companion_counts = np.asarray(counts), np.asarray(companion_counts)
+    shots, companions = counts.sum(), companion_counts.sum()
+    drawn, companion = counts / shots, companion_counts / companions
+    direction = (companion - ideal) / ((companion - ideal) ** 2).sum()
+    share = (drawn - ideal) @ direction
+    variance = direction @ multinomial_covariance(drawn) @ direction / shots
+    variance += share ** 2 * (direction @ multinomial_covariance(companion) @ direction
+                              ) / companions
+    return float(share), float(np.sqrt(variance))
+
+
 def multinomial_covariance(probabilities):
     """Covariance of one draw's indicator vector."""
     return np.diag(probabilities) - np.outer(probabilities, probabilities)

@@ -328,6 +328,26 @@ def readout_in_condition(p01, p10):
     return circuit, law
 
 
+def state_after_resets():
+    """A qubit reset after it was entangled, then given a T-type state, while its
+    old partner is reset as well: nothing of the past is left, and the state is
+    undone for certain. Textbook."""
+    circuit = Circuit()
+    q = circuit.qubits("q", 2)
+    c = circuit.bits("c", 1)
+    circuit.gate("h", q[0])
+    circuit.gate("cz", *q)
+    circuit.reset(q[1])
+    circuit.reset(q[0])
+    circuit.gate("h", q[1])
+    circuit.gate("t", q[1])
+    circuit.gate("cx", *q)
+    circuit.gate("tdg", q[1])
+    circuit.gate("h", q[1])
+    circuit.measure(q[1], c[0])
+    return circuit, certain(0, 1)
+
+
 def inverse_pair(count, rounds, seed):
     """A circuit and then its inverse: all zeros. Common practice, no source."""
     choose = np.random.default_rng(seed)
@@ -374,6 +394,7 @@ def catalogue():
         "relaxed coherence": relaxed(80, 60, 5, False),
         "relaxed excitation": relaxed(80, 60, 25, True),
         "readout flip": readout_in_condition(0.03, 0.11),
+        "state after resets": state_after_resets(),
         "circuit and inverse": inverse_pair(4, 12, 5),
     }
     for basis in "XYZ":

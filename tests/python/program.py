@@ -29,7 +29,7 @@ def binary():
     return str(max(built, key=lambda path: path.stat().st_mtime))
 
 
-def command(*arguments, timeout=120, check=True):
+def command(*arguments, timeout=900, check=True):
     """One call of the program."""
     result = subprocess.run([binary(), *map(str, arguments)], capture_output=True,
                             text=True, timeout=timeout)

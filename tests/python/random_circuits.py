@@ -14,8 +14,8 @@ COMPARISONS = ("==", "!=", "<", "<=", ">", ">=")
 class Generator:
     """Fills a circuit with random statements."""
 
-    def __init__(self, seed, qubits, measured_early, damping):
-        self.damping = damping
+    def __init__(self, seed, qubits, measured_early, damping, interrupted):
+        self.damping, self.interrupted = damping, interrupted
         self.random = np.random.default_rng(seed)
         self.circuit = Circuit()
         self.q = self.circuit.qubits("q", qubits)
@@ -103,7 +103,7 @@ class Generator:
 
     def statement(self):
         """Any statement."""
-        kind = self.random.random()
+        kind = self.random.random() if self.interrupted else 0
         if kind < 0.85:
             self.gate()
         elif kind < 0.9:
@@ -124,10 +124,13 @@ class Generator:
         self.circuit.rule(["measure"], channels.readout_flip(0.01, 0.02))
 
 
-def build(seed, qubits=3, calls=16, measured_early=2, damping=True):
+def build(seed, qubits=3, calls=16, measured_early=2, damping=True,
+          interrupted=True):
     """A random circuit. Without `damping` it has no amplitude damping and no
-    relaxation, which sparse terms cannot do on entangled qubits."""
-    generator = Generator(seed, qubits, measured_early, damping)
+    relaxation, which sparse terms cannot do on entangled qubits. Not
+    `interrupted`, there is no reset, delay or discarded measurement among the
+    gates."""
+    generator = Generator(seed, qubits, measured_early, damping, interrupted)
     for qubit in generator.q:
         generator.circuit.gate("u3", qubit, parameters=tuple(
             generator.number(-3, 3) for _ in range(3)))

@@ -113,6 +113,20 @@ class Power(unittest.TestCase):
         companions = random.multinomial(50_000, companion)
         self.assertLess(fit.mixture_p_value(counts, companions, ideal, 0.3), fit.FALSE_ALARM)
 
+    def test_admixture(self):
+        """The share is found, with the stated standard error."""
+        random = np.random.default_rng(23)
+        ideal, companion = random.dirichlet(np.ones(8)), random.dirichlet(np.ones(8))
+        pulls = []
+        for _ in range(400):
+            counts = random.multinomial(20_000, 0.7 * ideal + 0.3 * companion)
+            companions = random.multinomial(20_000, companion)
+            share, error = fit.admixture(counts, companions, ideal)
+            pulls.append((share - 0.3) / error)
+        # Mean and spread of 400 standard normals, at 1e-6.
+        self.assertLess(abs(np.mean(pulls)), 4.9 / np.sqrt(400))
+        self.assertLess(abs(np.std(pulls) - 1), 4.9 / np.sqrt(800))
+
     def test_mixture_catches_impossible_outcomes(self):
         counts, companions = np.array([900, 80, 20]), np.array([700, 300, 0])
         ideal = np.array([1.0, 0.0, 0.0])
