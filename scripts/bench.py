@@ -24,7 +24,7 @@ CASES = [
     ("wide-layers", "bench-b-gates", 0.5),
     ("wide-mirror", "bench-b-gates", 0.5),
 ]
-READOUTS = ("dense", "probe")
+READOUTS = ("dense", "walk", "probe")
 
 
 # What the cost of a shot must not depend on: Clifford gates that undo each
