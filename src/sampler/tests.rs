@@ -7,6 +7,7 @@
 //! unnormalised density matrix for every value of the classical bits and acts
 //! on it with plain matrices.
 
+mod exact;
 mod random_circuits;
 mod reference;
 

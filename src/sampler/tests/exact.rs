@@ -1,0 +1,97 @@
+//! The exact distributions against plain matrices and against companion shots.
+
+use super::*;
+use crate::exact::{ExactError, companion, ideal};
+
+/// The evaluation with few qubits at a time and merged branches agrees with one
+/// that keeps all qubits and all bits, on random adaptive noisy circuits; also
+/// where only some bits are recorded, so that others may be forgotten.
+#[test]
+fn exact_distributions_agree_with_plain_matrices() {
+    let mut rng = Pcg64::seed_from_u64(11);
+    for round in 0..120 {
+        let qubits = 2 + round % 3;
+        let menu = Menu {
+            damping: round % 2 == 0,
+            generic_angles: true,
+            branches: round % 3 == 0,
+            instructions: 14 + 4 * qubits,
+            magic: 6,
+        };
+        let circuit = random_circuit(&mut rng, qubits as u32, menu);
+        let plain = reference(&circuit, qubits);
+        let bits = qubits as u32 + 2;
+        for recorded in [
+            (0..bits).collect::<Vec<u32>>(),
+            vec![bits - 1, 0],
+            vec![1],
+            Vec::new(),
+        ] {
+            let law = ideal(&circuit, &recorded).expect("a small circuit");
+            let mut marginal: BTreeMap<u64, f64> = BTreeMap::new();
+            for (value, weight) in &plain {
+                let read = (0..).zip(&recorded).fold(0, |read, (place, bit)| {
+                    read | u64::from(value >> bit & 1) << place
+                });
+                *marginal.entry(read).or_insert(0.0) += weight;
+            }
+            for (value, expected) in marginal {
+                let key: &[u64] = if recorded.is_empty() { &[] } else { &[value] };
+                let found = law.weight(key);
+                assert!(
+                    (found - expected).abs() < 1e-11,
+                    "round {round}: {found}, not {expected}\n{circuit:#?}"
+                );
+            }
+            assert!((law.total() - 1.0).abs() < 1e-10);
+        }
+    }
+}
+
+/// 40,000 companion shots of each circuit follow the exact companion
+/// distribution, whatever was merged into sites and whatever the program left
+/// out.
+#[test]
+fn companion_shots_follow_the_exact_companion() {
+    let mut rng = Pcg64::seed_from_u64(12);
+    let mut refused = 0;
+    for round in 0..90 {
+        let qubits = 2 + round % 3;
+        let menu = Menu {
+            damping: false,
+            generic_angles: round % 2 == 0,
+            branches: round % 3 == 0,
+            instructions: 14 + 4 * qubits,
+            magic: 6,
+        };
+        let circuit = random_circuit(&mut rng, qubits as u32, menu);
+        let program = compile(&circuit, qubits, round % 5 != 4);
+        let recorded: Vec<u32> = (0..program.bits() as u32).collect();
+        let law = match companion(&program, &recorded) {
+            Err(ExactError::BranchingCcz) => {
+                refused += 1;
+                continue;
+            }
+            law => law.expect("a small circuit"),
+        };
+        let law: BTreeMap<u32, f64> = law
+            .iter()
+            .map(|(value, weight)| (value[0] as u32, weight))
+            .collect();
+        let (sites, slots) = (program.sites(), program.slots());
+        let counts = sample(
+            &program,
+            Family::Companion,
+            Drawing::Companion,
+            40_000,
+            round as u64,
+            || Probe::<1>::new(sites, slots, probe::Settings::single(), &NEVER),
+        );
+        let found = deviation(&counts, &law);
+        assert!(
+            found < LIMIT,
+            "round {round}: {found} deviations\n{circuit:#?}"
+        );
+    }
+    assert!(refused < 20, "{refused} of 90 were refused");
+}
