@@ -8,6 +8,8 @@
 //! p the chances of its members. The mixing law ([`Law::mixed`]) puts the two
 //! together.
 //!
+//! [`fit`] tests drawn values against such laws.
+//!
 //! A qubit joins at its first use and is traced out after its last one; there
 //! is one matrix for every value of the classical bits that are still needed.
 //! What is too large is refused with the number found and the number allowed.
@@ -17,11 +19,13 @@
 
 mod companion;
 mod evaluate;
+pub mod fit;
 mod ideal;
 mod law;
 mod lives;
 mod matrix;
 mod operation;
+pub mod tail;
 #[cfg(test)]
 mod tests;
 
