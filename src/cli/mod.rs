@@ -7,8 +7,10 @@
 //! wrong and nothing was written; 130 interrupted.
 
 mod input;
+mod machine;
 mod message;
 mod options;
+mod places;
 mod progress;
 mod run;
 mod show;
