@@ -288,6 +288,22 @@ impl Program {
         instructions
     }
 
+    /// Sites met in the first segment before anything of the register is
+    /// measured or damped, in order; indices into [`Program::sites`].
+    pub fn early_sites(&self) -> Vec<u32> {
+        let reads = |step: &&Step| matches!(step, Step::Measure { .. } | Step::Damp { .. });
+        let steps = self.first.steps.iter().take_while(|step| !reads(step));
+        steps
+            .filter_map(|step| match step {
+                Step::Prepare { site, .. }
+                | Step::Rotate { site, .. }
+                | Step::Ccz { site, .. }
+                | Step::Skip { site } => Some(*site),
+                _ => None,
+            })
+            .collect()
+    }
+
     /// Places where a fault may happen, in circuit order.
     pub fn locations(&self) -> &[Location] {
         &self.locations
