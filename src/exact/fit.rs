@@ -36,11 +36,16 @@ pub struct Counts {
 impl Counts {
     /// Adds one drawn value.
     pub fn add(&mut self, value: &[u64]) {
-        self.shots += 1;
+        self.add_many(value, 1);
+    }
+
+    /// Adds a value drawn `times` times.
+    pub fn add_many(&mut self, value: &[u64], times: u64) {
+        self.shots += times;
         match self.by_value.get_mut(value) {
-            Some(count) => *count += 1,
+            Some(count) => *count += times,
             None => {
-                self.by_value.insert(value.to_vec(), 1);
+                self.by_value.insert(value.to_vec(), times);
             }
         }
     }

@@ -95,3 +95,72 @@ fn companion_shots_follow_the_exact_companion() {
     }
     assert!(refused < 20, "{refused} of 90 were refused");
 }
+
+/// Ten T gates between random Clifford gates, measured at the end: a histogram
+/// of 40,000 shots with k terms is accepted by the law of k terms and rejected
+/// by that of 2k, at 1e-6 and with nothing sampled in the law.
+#[test]
+fn the_law_of_another_number_of_terms_is_rejected() {
+    let mut rng = Pcg64::seed_from_u64(13);
+    let qubits = 3;
+    let mut instructions = Vec::new();
+    let mut push = |kind| {
+        instructions.push(Instruction {
+            kind,
+            condition: None,
+            operation: 0,
+        });
+    };
+    for site in 0..10u32 {
+        for _ in 0..6 {
+            push(Kind::Clifford(random_clifford(&mut rng, qubits)));
+        }
+        push(Kind::Clifford(Clifford::H(site % qubits)));
+        push(Kind::Rotation {
+            axis: smallvec![(site % qubits, Pauli::Z)],
+            angle: std::f64::consts::FRAC_PI_4,
+        });
+    }
+    for qubit in 0..qubits {
+        push(Kind::Clifford(Clifford::H(qubit)));
+        push(Kind::Measure {
+            qubit,
+            bit: Some(qubit),
+            flip: ReadoutFlip::default(),
+        });
+    }
+    let circuit = NoisyCircuit {
+        instructions,
+        warnings: Vec::new(),
+    };
+    let program = compile(&circuit, qubits as usize, true);
+    let recorded: Vec<u32> = (0..program.bits() as u32).collect();
+    let ideal = ideal(&circuit, &recorded).expect("a small circuit");
+    let companion = companion(&program, &recorded).expect("a small circuit");
+    let extent = log_extent(program.sites());
+    for terms in [2, 4, 8] {
+        let settings = walk::Settings::new(program.sites(), terms);
+        let (sites, slots) = (program.sites(), program.slots());
+        let drawn = sample(
+            &program,
+            Family::Shots,
+            Drawing::Terms(terms as usize),
+            40_000,
+            terms,
+            || Walk::<1>::new(sites, slots, settings),
+        );
+        let mut counts = Counts::default();
+        for (bits, count) in drawn {
+            counts.add_many(&[u64::from(bits)], count as u64);
+        }
+        for (law_of, accepted) in [(terms, true), (2 * terms, false)] {
+            let law = ideal.mixed(&companion, mixing_weight(extent, law_of));
+            let found = fit(&counts, &law);
+            assert_eq!(
+                found.p_value > 1e-6,
+                accepted,
+                "{terms} terms, law of {law_of}: {found:?}"
+            );
+        }
+    }
+}
