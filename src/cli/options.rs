@@ -155,8 +155,7 @@ pub(super) struct Verify {
     #[arg(long, value_name = "K", value_parser = terms)]
     pub terms: Option<TermsOption>,
 
-    /// Number of companion shots [default: as many as shots; 0 for dense and
-    /// where damping meets entangled qubits]
+    /// Number of companion shots [default: as many as shots; 0 for dense]
     #[arg(long, value_name = "M")]
     pub companion: Option<u64>,
 

@@ -111,13 +111,6 @@ impl<'a> Plan<'a> {
             None if choice.readout == Readout::Dense => 0,
             None => options.shots,
         };
-        if companion > 0 && input.program.has_damping() {
-            return Err(CommandError::Usage(
-                "companion shots cannot be drawn of a circuit that damps an entangled qubit: \
-                 leave out --companion"
-                    .to_owned(),
-            ));
-        }
         let part = options
             .part
             .map_or(Part::default(), |(index, count)| Part { index, count });

@@ -28,7 +28,7 @@ pub(super) fn verify(options: &Verify) -> Result<(), CommandError> {
     let log_extent = log_extent(input.program.sites());
     let choice = choice::choose(&input.program, log_extent, &wish(options, threads))?;
     let recorded = recorded_bits(&input);
-    let companion_shots = companion_shots(options, &input, &choice)?;
+    let companion_shots = companion_shots(options, &choice);
 
     let ideal = exact::ideal(&noisy(&input)?, &recorded)?;
     let companion = if choice.terms.is_some() || companion_shots > 0 {
@@ -120,17 +120,11 @@ fn recorded_bits(input: &Input) -> Vec<u32> {
         .collect()
 }
 
-fn companion_shots(options: &Verify, input: &Input, choice: &Choice) -> Result<u64, CommandError> {
-    let damped = input.program.has_damping();
+fn companion_shots(options: &Verify, choice: &Choice) -> u64 {
     match options.companion {
-        Some(count) if count > 0 && damped => Err(CommandError::Usage(
-            "companion shots cannot be drawn of a circuit that damps an entangled qubit: leave \
-             out --companion"
-                .to_owned(),
-        )),
-        Some(count) => Ok(count),
-        None if choice.readout == Readout::Dense || damped => Ok(0),
-        None => Ok(options.shots),
+        Some(count) => count,
+        None if choice.readout == Readout::Dense => 0,
+        None => options.shots,
     }
 }
 
