@@ -3,7 +3,7 @@
 use std::path::Path;
 
 use shottower::report::Summary;
-use shottower::sampler::Rows;
+use shottower::sampler::{NormAudit, Rows};
 use shottower::store::{
     AuditBlock, Finished, Header, Part, RegisterHeader, ShotFile, SiteRow, Writer, WriterOptions,
 };
@@ -81,10 +81,25 @@ fn write(path: &Path, change: impl FnOnce(&mut Header)) -> ShotFile {
         attempts: (0..100).map(|shot| 1 + shot % 2).collect(),
         peak_active: (0..100).map(|shot| shot % 8).collect(),
         terms_left: vec![4; 100],
-        norm: vec![1.5; 100],
     };
     writer.append_audit(&audit).unwrap();
-    writer.finish(Finished { clipped: 2 }).unwrap();
+    // ξ = 3, k = 7: 1 + 2/7 expected. By hand: 32 times each of 1 and 1.5 have the
+    // mean 1.25 and the standard error 0.25·√(64/63)/8 = 0.031497.
+    let audit = NormAudit {
+        shots: (0..64).collect(),
+        estimates: (0..64)
+            .map(|shot| 1.0 + 0.5 * f64::from(shot % 2))
+            .collect(),
+        log_extent: 3f64.ln(),
+        terms: 7,
+        probes: 16,
+    };
+    writer.write_norms(&audit).unwrap();
+    let finished = Finished {
+        clipped: 2,
+        damped: None,
+    };
+    writer.finish(finished).unwrap();
     ShotFile::open(path).unwrap()
 }
 
@@ -110,6 +125,7 @@ shots       100, 50 companion shots
 seed        42
 settings    absorb=on
 sampling    at most 7 active qubits, 1.5 draws a shot, 2 shots clipped
+norm check  mean 1.250 ± 0.031 of 64 draws, 1.286 expected: as it should be
 
 syndrome (check, 4 bits)  as drawn                corrected
   any nonzero             0.300 ± 0.046           0.250 ± 0.077
@@ -146,6 +162,12 @@ fn json_for_a_program() {
     close("/shots", 100.0);
     close("/companion_shots", 50.0);
     close("/clipped", 2.0);
+    close("/norm/mean", 1.25);
+    close("/norm/standard_error", 0.25 * (64.0f64 / 63.0).sqrt() / 8.0);
+    close("/norm/expected", 9.0 / 7.0);
+    let error = 0.25 * (64.0f64 / 63.0).sqrt() / 8.0;
+    close("/norm/deviation", (1.25 - 9.0 / 7.0) / error);
+    assert_eq!(json["norm"]["accepted"], true);
     close("/draws/mean_attempts", 1.5);
     close("/draws/peak_active", 7.0);
     close("/draws/mean_terms_left", 4.0);
@@ -177,6 +199,40 @@ fn json_for_a_program() {
     assert_eq!(json["complete"], true);
     assert_eq!(json["title"], "bench B");
     assert_eq!(json["settings"][0][1], "on");
+}
+
+/// 64 estimates of mean 1.25 ± 0.031 where 9/7 or 2 are expected, and of too few.
+#[test]
+fn a_wrong_norm_is_told_plainly() {
+    let folder = tempfile::tempdir().unwrap();
+    let shown = |name: &str, log_extent: f64, count: u32| {
+        let path = folder.path().join(name);
+        let header = Header {
+            terms: Some(7),
+            mixing_weight: 0.5,
+            ..Header::default()
+        };
+        let mut writer = Writer::create(&path, &header, WriterOptions::default()).unwrap();
+        let estimate = |shot: u32| 1.0 + 0.5 * f64::from(shot % 2);
+        let audit = NormAudit {
+            shots: (0..u64::from(count)).collect(),
+            estimates: (0..count).map(estimate).collect(),
+            log_extent,
+            terms: 7,
+            probes: 16,
+        };
+        writer.write_norms(&audit).unwrap();
+        writer.finish(Finished::default()).unwrap();
+        let file = ShotFile::open(&path).unwrap();
+        Summary::from_file(&file).unwrap().to_string()
+    };
+    let right = shown("right.h5", 3f64.ln(), 64);
+    assert!(right.contains("1.286 expected: as it should be"), "{right}");
+    let wrong = shown("wrong.h5", 8f64.ln(), 64);
+    assert!(wrong.contains("2 expected: WRONG"), "{wrong}");
+    assert!(wrong.contains("23.8 standard errors"), "{wrong}");
+    let few = shown("few.h5", 8f64.ln(), 8);
+    assert!(few.contains("too few to tell"), "{few}");
 }
 
 #[test]

@@ -2,8 +2,9 @@
 
 use std::fmt::{self, Display, Formatter};
 
+use super::Estimate;
 use super::number::{format_estimate, format_extent, format_plain};
-use super::summary::{Outcome, Quantity, RegisterSummary, Summary};
+use super::summary::{NormCheck, Outcome, Quantity, RegisterSummary, Summary};
 
 /// Most bits of a register that are listed one by one.
 const MOST_BITS: usize = 16;
@@ -51,6 +52,9 @@ impl Display for Summary {
             }
             line(out, "sampling", &text)?;
         }
+        if let Some(norm) = &self.norm {
+            line(out, "norm check", &norm.to_string())?;
+        }
         let labels = self
             .registers
             .iter()
@@ -60,6 +64,40 @@ impl Display for Summary {
             self.register(out, register, label)?;
         }
         self.notes(out)
+    }
+}
+
+impl Display for NormCheck {
+    fn fmt(&self, out: &mut Formatter<'_>) -> fmt::Result {
+        let mean = Estimate {
+            value: self.mean,
+            standard_error: self.standard_error.unwrap_or(0.0),
+            limit_95: None,
+        };
+        let draws = match self.estimates {
+            1 => "1 draw".to_owned(),
+            estimates => format!("{estimates} draws"),
+        };
+        write!(
+            out,
+            "mean {} of {draws}, {} expected: ",
+            format_estimate(&mean),
+            format_plain(self.expected)
+        )?;
+        match (self.accepted, self.deviation) {
+            (None, _) => write!(out, "too few to tell"),
+            (Some(true), _) => write!(out, "as it should be"),
+            (Some(false), deviation) => {
+                let far = match deviation {
+                    Some(deviation) => format!("{:.1} standard errors", deviation.abs()),
+                    None => "more than rounding".to_owned(),
+                };
+                write!(
+                    out,
+                    "WRONG\n            by {far}: the shots do not follow their law, do not use them"
+                )
+            }
+        }
     }
 }
 

@@ -5,9 +5,11 @@
 //! /                       attributes, see [`Header`]
 //! /shots/<register>       bool [shots, width]; attribute `role`
 //! /companion/<register>   the same for the companion shots, if drawn
-//! /audit/                 attempts u32, peak_active u16, terms_left u32, norm
-//!                         f64 (estimate of ‖Ω‖², NaN where none was made), one
+//! /audit/                 attempts u32, peak_active u16, terms_left u32, one
 //!                         value a shot; attribute `clipped`
+//! /audit/norm/            runs with terms: shot u64, estimate f64 (of ‖Ω‖²),
+//!                         one entry an audited draw; attributes `expected`,
+//!                         `log_extent`, `terms`, `probes`
 //! /faults/                with faults: shot u64, location u32, pauli u64, one
 //!                         entry an event, and the table `locations`
 //! /sites                  the table of non-Clifford places
@@ -38,4 +40,4 @@ pub use block::AuditBlock;
 pub use error::StoreError;
 pub use header::{FORMAT, FORMAT_VERSION, Header, LocationRow, Part, RegisterHeader, SiteRow};
 pub use reader::{Blocks, ShotFile};
-pub use writer::{Finished, Writer, WriterOptions};
+pub use writer::{Damped, Finished, Writer, WriterOptions};
