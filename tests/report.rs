@@ -127,22 +127,27 @@ settings    absorb=on
 sampling    at most 7 active qubits, 1.5 draws a shot, 2 shots clipped
 norm check  mean 1.250 ± 0.031 of 64 draws, 1.286 expected: as it should be
 
-syndrome (check, 4 bits)  as drawn                corrected
-  any nonzero             0.300 ± 0.046           0.250 ± 0.077
-  mean weight             0.600 ± 0.092           0.50 ± 0.15
+syndrome (check, 4 bits)  as drawn           companion          corrected
+  any nonzero             0.300 ± 0.046      0.400 ± 0.069      0.250 ± 0.077
+  mean weight             0.600 ± 0.092      0.80 ± 0.14        0.50 ± 0.15
+  bit 0 is 1              0 (< 3.0e-2)       0 (< 5.8e-2)       0.000 ± 0.018
+  bit 1 is 1              0.300 ± 0.046      0.400 ± 0.069      0.250 ± 0.077
+  bit 2 is 1              0 (< 3.0e-2)       0 (< 5.8e-2)       0.000 ± 0.018
+  bit 3 is 1              0.300 ± 0.046      0.400 ± 0.069      0.250 ± 0.077
 
-answer (logical, 2 bits)  as drawn                corrected
-  bit 0 is 1              0.600 ± 0.049           0.700 ± 0.081
-  bit 1 is 1              0 (< 3.0e-2)            0.000 ± 0.018
+answer (logical, 2 bits)  as drawn           companion          corrected
+  any nonzero             0.600 ± 0.049      0.400 ± 0.069      0.700 ± 0.081
+  bit 0 is 1              0.600 ± 0.049      0.400 ± 0.069      0.700 ± 0.081
+  bit 1 is 1              0 (< 3.0e-2)       0 (< 5.8e-2)       0.000 ± 0.018
 
-out (record, 3 bits)      as drawn                corrected
-  101                     0.500 ± 0.050           0.650 ± 0.080
-  011                     0.400 ± 0.049           0.200 ± 0.079
-  000                     0.100 ± 0.030           0.150 ± 0.046
+out (record, 3 bits)      as drawn           companion          corrected
+  101                     0.500 ± 0.050      0.200 ± 0.057      0.650 ± 0.080
+  011                     0.400 ± 0.049      0.800 ± 0.057      0.200 ± 0.079
+  000                     0.100 ± 0.030      0 (< 5.8e-2)       0.150 ± 0.046
 
 ± is one standard error; (< or >) is a 95 % limit.
 Outcomes are written with bit 0 on the right.
-Corrected: the companion's share λ taken out.
+Corrected: (as drawn - λ·companion)/(1 - λ), errors of both propagated.
 ";
     assert_eq!(text, expected);
     assert!(text.lines().all(|line| line.chars().count() <= 80));

@@ -10,8 +10,10 @@ use super::summary::{NormCheck, Outcome, Quantity, RegisterSummary, Summary};
 const MOST_BITS: usize = 16;
 /// Outcomes of wider registers are printed in hexadecimal.
 const MOST_BINARY_DIGITS: usize = 28;
+/// Width of a column of numbers.
+const COLUMN: usize = 17;
 /// Least width of the column of names.
-const LEAST_LABEL: usize = 24;
+const LEAST_LABEL: usize = 22;
 
 impl Display for Summary {
     fn fmt(&self, out: &mut Formatter<'_>) -> fmt::Result {
@@ -187,15 +189,24 @@ impl Summary {
         if self.shots == 0 || register.width == 0 {
             return writeln!(out, "{title}");
         }
-        let with_correction = self.has_correction();
-        let heading = if with_correction { "corrected" } else { "" };
-        let heading = format!("{title:label$}  {:22}  {heading}", "as drawn");
+        let headings = match self.has_correction() {
+            true => ["companion", "corrected"],
+            false => ["", ""],
+        };
+        let heading = format!(
+            "{title:label$}  {:COLUMN$}  {:COLUMN$}  {}",
+            "as drawn", headings[0], headings[1]
+        );
         writeln!(out, "{}", heading.trim_end())?;
         for (name, quantity) in rows_of(register, self.shots) {
             let show =
                 |estimate| Option::as_ref(estimate).map_or_else(String::new, format_estimate);
+            let companion = match quantity.corrected {
+                Some(_) => show(&quantity.companion),
+                None => String::new(),
+            };
             let text = format!(
-                "  {name:indent$}  {:22}  {}",
+                "  {name:indent$}  {:COLUMN$}  {companion:COLUMN$}  {}",
                 show(&quantity.raw),
                 show(&quantity.corrected),
                 indent = label - 2
@@ -219,7 +230,10 @@ impl Summary {
             writeln!(out, "Outcomes are written with bit 0 on the right.")?;
         }
         if self.has_correction() {
-            writeln!(out, "Corrected: the companion's share λ taken out.")?;
+            writeln!(
+                out,
+                "Corrected: (as drawn - λ·companion)/(1 - λ), errors of both propagated."
+            )?;
         } else if self.terms == Some(1) {
             writeln!(
                 out,
@@ -249,28 +263,26 @@ fn line(out: &mut Formatter<'_>, name: &str, value: &str) -> fmt::Result {
     writeln!(out, "{name:11} {value}")
 }
 
-/// The lines of a register: checks as a whole, logical readouts bit by bit,
-/// records by their outcomes where any was seen twice.
+/// The lines of a register: checks and logical readouts of more than one bit as
+/// a whole, then bit by bit; records by their outcomes where any was seen twice,
+/// else bit by bit.
 fn rows_of(register: &RegisterSummary, shots: u64) -> Vec<(String, &Quantity)> {
-    if register.role == "check" {
-        return vec![
-            ("any nonzero".to_owned(), &register.any_nonzero),
-            ("mean weight".to_owned(), &register.mean_weight),
-        ];
-    }
-    match listed_outcomes(register, shots) {
-        Some(outcomes) => outcomes
+    if let Some(outcomes) = listed_outcomes(register, shots) {
+        return outcomes
             .iter()
             .map(|outcome| (label(outcome), &outcome.frequency))
-            .collect(),
-        None => register
-            .bits
-            .iter()
-            .take(MOST_BITS)
-            .enumerate()
-            .map(|(index, quantity)| (format!("bit {index} is 1"), quantity))
-            .collect(),
+            .collect();
     }
+    let mut rows = Vec::new();
+    if register.role != "record" && register.width > 1 {
+        rows.push(("any nonzero".to_owned(), &register.any_nonzero));
+    }
+    if register.role == "check" && register.width > 1 {
+        rows.push(("mean weight".to_owned(), &register.mean_weight));
+    }
+    let bits = register.bits.iter().take(MOST_BITS).enumerate();
+    rows.extend(bits.map(|(index, quantity)| (format!("bit {index} is 1"), quantity)));
+    rows
 }
 
 fn listed_outcomes(register: &RegisterSummary, shots: u64) -> Option<&[Outcome]> {
@@ -294,9 +306,6 @@ fn label(outcome: &Outcome) -> String {
 }
 
 fn what_is_left_out(register: &RegisterSummary, shots: u64) -> Option<String> {
-    if register.role == "check" {
-        return None;
-    }
     match listed_outcomes(register, shots) {
         Some(outcomes) => {
             let more = register.distinct_outcomes? - outcomes.len() as u64;

@@ -57,10 +57,10 @@ impl NormAudit {
 /// Costs are those of one term and count from the steps alone, never from the
 /// clock, so that every part of a run comes to the same number. The unit is one
 /// step of `walk`; a step on terms that are not kept relative to a sample takes
-/// about 5, an overlap with a random state about 40.
+/// about 5, an overlap with a random state about 10.
 pub fn audited(program: &Program, choice: &Choice, total: u64) -> u64 {
     const PLAIN_STEP: f64 = 5.0;
-    const OVERLAP: f64 = 40.0;
+    const OVERLAP: f64 = 10.0;
     let steps = &program.first().steps;
     let reads = |step: &Step| matches!(step, Step::Measure { .. } | Step::Damp { .. });
     let early = steps.iter().take_while(|step| !reads(step)).count() as f64;

@@ -271,6 +271,7 @@ impl Prepared {
             ("noise", header.noise.as_deref()),
             ("title", header.title.as_deref()),
             ("readout", Some(header.readout.as_str())),
+            ("correction", options.companion.then_some(super::CORRECTION)),
         ];
         let texts = texts
             .into_iter()
