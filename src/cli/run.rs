@@ -2,30 +2,24 @@
 
 use std::cell::Cell;
 use std::path::Path;
-use std::time::{Duration, Instant};
 
 use crate::circuit::Register as BitRegister;
+use crate::magic::Sparsifier;
 use crate::magic::mixing::log_extent;
-use crate::magic::{Site, SiteKind, Sparsifier};
-use crate::program::{Location, MAX_SLOTS, Program};
-use crate::readout::Register;
+use crate::program::Program;
 use crate::readout::choice::{self, Choice, Readout, TermCount, Wish};
-use crate::readout::dense::Dense;
-use crate::readout::probe::{Probe, Settings};
-use crate::readout::walk::{self, Walk};
 use crate::report::Summary;
-use crate::sampler::{Block, Drawing, Family, Interrupt, Sampler};
+use crate::sampler::{Block, Drive};
 use crate::store::{
-    AuditBlock, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError,
-    Writer, WriterOptions,
+    AuditBlock, Finished, Header, Part, RegisterHeader, ShotFile, StoreError, Writer, WriterOptions,
 };
 
+use super::CommandError;
 use super::input::{self, Input, Reading};
+use super::machine::{INTERRUPT, available_memory, catch_interrupts, start_threads};
 use super::options::{ReadoutOption, Run, Switch, TermsOption};
+use super::places::Places;
 use super::progress::Shown;
-use super::{CommandError, message};
-
-static INTERRUPT: Interrupt = Interrupt::new();
 
 /// Draws shots of a circuit into a result file.
 pub(super) fn run(options: &Run) -> Result<(), CommandError> {
@@ -237,46 +231,33 @@ impl<'a> Plan<'a> {
             return Ok(());
         }
         let sparsifier = Sparsifier::new(program.sites());
-        let write = |block: &Block| Ok(writer.append_companion(&block.rows)?);
-        let mut progress = Shown::new("companion", self.companion_count(), options.quiet);
-        let sampler = self.sampler(program, &sparsifier, MAX_SLOTS, false, Drawing::Companion);
-        with_walk(
-            program,
-            1,
-            Sample {
-                sampler: &sampler,
-                family: Family::Companion,
-                range: self.companion.clone(),
-                progress: &mut progress,
-                sink: write,
-            },
+        let write = |block: &Block| Ok::<_, CommandError>(writer.append_companion(&block.rows)?);
+        let total = self.companion.end - self.companion.start;
+        let mut progress = Shown::new("companion", total, options.quiet);
+        self.drive(program, &sparsifier, false).companion(
+            self.companion.clone(),
+            &INTERRUPT,
+            &mut progress,
+            write,
         )?;
         progress.finish();
         Ok(())
     }
 
-    fn companion_count(&self) -> u64 {
-        self.companion.end - self.companion.start
-    }
-
-    fn sampler<'p>(
+    fn drive<'p>(
         &self,
         program: &'p Program,
         sparsifier: &'p Sparsifier,
-        room: usize,
         keep_events: bool,
-        drawing: Drawing,
-    ) -> Sampler<'p> {
-        let recorded = self.recorded.clone();
-        Sampler::new(
+    ) -> Drive<'p> {
+        Drive {
             program,
             sparsifier,
-            recorded,
-            self.seed,
-            room,
+            recorded: self.recorded.clone(),
+            seed: self.seed,
             keep_events,
-            drawing,
-        )
+            accept_all: false,
+        }
     }
 
     fn draw_shots(
@@ -304,30 +285,13 @@ impl<'a> Plan<'a> {
         };
         let total = self.shots.end - self.shots.start;
         let mut progress = Shown::new("shots", total, options.quiet);
-        let drawing = match self.choice.terms {
-            None => Drawing::Members,
-            Some(terms) => Drawing::Terms(terms as usize),
-        };
-        let sampler = self.sampler(
-            program,
-            &sparsifier,
-            self.choice.room,
-            options.faults,
-            drawing,
-        );
-        let sample = Sample {
-            sampler: &sampler,
-            family: Family::Shots,
-            range: self.shots.clone(),
-            progress: &mut progress,
-            sink: write,
-        };
-        let active = program.first().peak_active;
-        match (self.choice.readout, self.choice.probe, self.choice.terms) {
-            (Readout::Probe, Some(settings), _) => with_probe(program, settings, sample)?,
-            (Readout::Walk, _, Some(terms)) => with_walk(program, terms, sample)?,
-            _ => sample.with(|| Dense::new(program.sites(), active))?,
-        };
+        self.drive(program, &sparsifier, options.faults).shots(
+            &self.choice,
+            self.shots.clone(),
+            &INTERRUPT,
+            &mut progress,
+            write,
+        )?;
         progress.finish();
         Ok(())
     }
@@ -342,162 +306,4 @@ impl<'a> Plan<'a> {
             "interrupted: {done} of {wanted} shots were finished and written"
         )))
     }
-}
-
-/// A call of the sampler, waiting for its register.
-struct Sample<'a, 'p, S> {
-    sampler: &'a Sampler<'p>,
-    family: Family,
-    range: std::ops::Range<u64>,
-    progress: &'a mut Shown,
-    sink: S,
-}
-
-impl<S: FnMut(&Block) -> Result<(), CommandError>> Sample<'_, '_, S> {
-    fn with<R: Register + Send>(self, make: impl Fn() -> R + Sync) -> Result<u64, CommandError> {
-        self.sampler.sample(
-            self.family,
-            self.range,
-            make,
-            &INTERRUPT,
-            self.progress,
-            self.sink,
-        )
-    }
-}
-
-/// Runs with terms of the smallest width that holds the slots.
-fn with_probe<S: FnMut(&Block) -> Result<(), CommandError>>(
-    program: &Program,
-    settings: Settings,
-    sample: Sample<'_, '_, S>,
-) -> Result<u64, CommandError> {
-    let (sites, slots) = (program.sites(), program.slots());
-    match slots {
-        0..=64 => sample.with(|| Probe::<1>::new(sites, slots, settings, &INTERRUPT)),
-        65..=128 => sample.with(|| Probe::<2>::new(sites, slots, settings, &INTERRUPT)),
-        _ => sample.with(|| Probe::<4>::new(sites, slots, settings, &INTERRUPT)),
-    }
-}
-
-/// The same for the walk.
-fn with_walk<S: FnMut(&Block) -> Result<(), CommandError>>(
-    program: &Program,
-    terms: u64,
-    sample: Sample<'_, '_, S>,
-) -> Result<u64, CommandError> {
-    let (sites, slots) = (program.sites(), program.slots());
-    let settings = walk::Settings::new(sites, terms, program.log_damping_trace());
-    match slots {
-        0..=64 => sample.with(|| Walk::<1>::new(sites, slots, settings)),
-        65..=128 => sample.with(|| Walk::<2>::new(sites, slots, settings)),
-        _ => sample.with(|| Walk::<4>::new(sites, slots, settings)),
-    }
-}
-
-/// Names and lines for the tables of a result file.
-struct Places<'a> {
-    input: &'a Input,
-    /// Offsets of all line ends of the circuit text.
-    line_ends: Vec<u32>,
-}
-
-impl<'a> Places<'a> {
-    fn new(input: &'a Input) -> Self {
-        let bytes = input.circuit.source.bytes().enumerate();
-        let line_ends = bytes
-            .filter(|&(_, byte)| byte == b'\n')
-            .map(|(offset, _)| offset as u32)
-            .collect();
-        Places { input, line_ends }
-    }
-
-    /// Line of an operation, from 1.
-    fn line(&self, operation: u32) -> u32 {
-        let start = self.input.circuit.operations[operation as usize].span.start;
-        self.line_ends.partition_point(|&end| end < start) as u32 + 1
-    }
-
-    fn names(&self, qubits: &[u32]) -> String {
-        let name = |&qubit: &u32| self.input.circuit.qubits[qubit as usize].as_str();
-        qubits.iter().map(name).collect::<Vec<_>>().join(", ")
-    }
-
-    fn sites(&self) -> Vec<SiteRow> {
-        let row = |(site, kept): (&Site, bool)| SiteRow {
-            line: self.line(site.operation),
-            qubits: self.names(&site.qubits),
-            kind: match site.kind {
-                SiteKind::Rotation(_) => "rotation",
-                SiteKind::Ccz(_) => "ccz",
-                SiteKind::Prepared(_) => "prepared",
-            }
-            .to_owned(),
-            extent_without_noise: site.extent_without_noise,
-            extent: site.extent,
-            members: match &site.kind {
-                SiteKind::Rotation(rotation) => rotation.members.len(),
-                SiteKind::Ccz(_) => 1,
-                SiteKind::Prepared(prepared) => prepared.members.len(),
-            } as u32,
-            kept,
-        };
-        self.input.program.all_sites().map(row).collect()
-    }
-
-    fn locations(&self) -> Vec<LocationRow> {
-        let row = |location: &Location| LocationRow {
-            line: self.line(location.operation),
-            kind: location.kind.word().to_owned(),
-            qubits: self.names(&location.qubits),
-            probability: location.probability,
-        };
-        self.input.program.locations().iter().map(row).collect()
-    }
-}
-
-/// Sets up the thread pool; says how many threads there are.
-fn start_threads(wanted: Option<u16>) -> Result<usize, CommandError> {
-    let mut builder = rayon::ThreadPoolBuilder::new();
-    if let Some(wanted) = wanted {
-        builder = builder.num_threads(usize::from(wanted));
-    }
-    builder
-        .build_global()
-        .map_err(|error| CommandError::Usage(format!("cannot start threads: {error}")))?;
-    Ok(rayon::current_num_threads())
-}
-
-/// The first Ctrl-C asks the work to stop; a later one ends the program. Some
-/// senders deliver one request twice at once, so a second signal counts only
-/// after a while.
-fn catch_interrupts() -> Result<(), CommandError> {
-    const SAME_REQUEST: Duration = Duration::from_secs(1);
-    let mut first: Option<Instant> = None;
-    ctrlc::set_handler(move || match first {
-        None => {
-            first = Some(Instant::now());
-            INTERRUPT.raise();
-            message::note(
-                "stopping; finished shots are kept (a second Ctrl-C ends at once and loses them)",
-            );
-        }
-        Some(first) if first.elapsed() < SAME_REQUEST => {}
-        Some(_) => std::process::exit(130),
-    })
-    .map_err(|error| CommandError::Usage(format!("cannot watch for Ctrl-C: {error}")))
-}
-
-/// Bytes of memory that may be used: nine tenths of what the system says is
-/// available, or no limit where it does not say.
-fn available_memory() -> u64 {
-    let said = std::fs::read_to_string("/proc/meminfo")
-        .ok()
-        .and_then(|text| {
-            let line = text
-                .lines()
-                .find(|line| line.starts_with("MemAvailable:"))?;
-            line.split_whitespace().nth(1)?.parse::<u64>().ok()
-        });
-    said.map_or(u64::MAX, |kibibytes| kibibytes * 1024 / 10 * 9)
 }

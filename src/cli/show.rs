@@ -12,14 +12,18 @@ pub(super) fn show(options: &Show) -> Result<(), CommandError> {
     print(&Summary::from_file(&file)?, options.json)
 }
 
-/// Prints a summary on stdout. A closed pipe is no error.
+/// Prints a summary on stdout.
 pub(super) fn print(summary: &Summary, json: bool) -> Result<(), CommandError> {
-    use std::io::{ErrorKind, Write};
-    let text = if json {
+    print_text(&if json {
         summary.to_json()
     } else {
         summary.to_string()
-    };
+    })
+}
+
+/// Prints a text on stdout. A closed pipe is no error.
+pub(super) fn print_text(text: &str) -> Result<(), CommandError> {
+    use std::io::{ErrorKind, Write};
     let mut stdout = std::io::stdout();
     match writeln!(stdout, "{}", text.trim_end()).and_then(|()| stdout.flush()) {
         Err(error) if error.kind() != ErrorKind::BrokenPipe => Err(CommandError::Print(error)),

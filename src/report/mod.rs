@@ -44,7 +44,11 @@ mod number;
 mod summary;
 mod tally;
 mod text;
+mod verification;
 
 pub use estimate::{Estimate, Sample};
 pub use number::format_extent;
 pub use summary::{Draws, Outcome, Quantity, RegisterSummary, Sites, Summary};
+pub use verification::{
+    Corrected, Distances, Drawn, LIMIT, LawTest, Setting, Verification, allowed_bias,
+};
