@@ -7,7 +7,8 @@
 //! circuit file → [`circuit`] (flat operations) → [`noise`] (channels in
 //! place) → [`magic`] (sites and ensembles) → [`clifford`] (frame and terms) →
 //! [`program`] (steps and flip sets) → [`readout`] (registers) → [`sampler`]
-//! (shots) → [`store`] (result file) → [`report`] (summaries) → [`cli`].
+//! (shots) → [`store`] (result file) → [`plan`] (costs) → [`report`] (summaries)
+//! → [`cli`].
 
 #![warn(missing_docs)]
 
@@ -16,6 +17,7 @@ pub mod cli;
 pub mod clifford;
 pub mod magic;
 pub mod noise;
+pub mod plan;
 pub mod program;
 pub mod readout;
 pub mod report;
