@@ -1,5 +1,6 @@
 //! `plan`: tell what a circuit costs before it is run.
 
+use std::collections::BTreeMap;
 use std::time::Instant;
 
 use crate::circuit::Circuit;
@@ -25,6 +26,9 @@ use super::rehearse::{self, Question};
 
 /// Most kinds of costly sites that are listed.
 const MOST_COSTLY: usize = 5;
+
+/// Most source lines of one kind.
+const MOST_LINES: usize = 32;
 
 /// Tells what a circuit costs.
 pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
@@ -80,7 +84,7 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
             };
             let sparsifier = Sparsifier::new(input.program.sites());
             let log_extent = log_extent(input.program.sites());
-            let most = deltas.iter().copied().fold(0.0, f64::max);
+            let most = deltas.iter().copied().fold(1.0, f64::max);
             let least = deltas.iter().copied().fold(2.0, f64::min);
             let range = match limited {
                 true => (
@@ -225,31 +229,32 @@ impl Asked<'_> {
     }
 }
 
-/// Sites by source line, kind and extent, those of the largest share of ξ first.
+/// Sites by kind and extent, to three decimals, those of the largest share of ξ
+/// first.
 fn costliest(places: &Places<'_>, sites: &[&Site]) -> Vec<Costly> {
-    let mut groups: Vec<Costly> = Vec::new();
-    let mut index = std::collections::HashMap::new();
+    let mut groups: BTreeMap<(&str, u64), Costly> = BTreeMap::new();
     for site in sites {
-        let log10 = site.extent.log10();
-        if log10 <= 0.0 {
+        if site.extent <= 1.0 {
             continue;
         }
         let (line, kind) = (places.line(site.operation), kind_word(site));
-        let group = *index
-            .entry((line, kind, site.extent.to_bits()))
-            .or_insert_with(|| {
-                groups.push(Costly {
-                    line,
-                    kind: kind.to_owned(),
-                    count: 0,
-                    extent: site.extent,
-                    log10_share: 0.0,
-                });
-                groups.len() - 1
+        let group = groups
+            .entry((kind, (site.extent * 1e3).round() as u64))
+            .or_insert_with(|| Costly {
+                lines: Vec::new(),
+                kind: kind.to_owned(),
+                count: 0,
+                extent: site.extent,
+                log10_share: 0.0,
             });
-        groups[group].count += 1;
-        groups[group].log10_share += log10;
+        group.count += 1;
+        group.extent = group.extent.max(site.extent);
+        group.log10_share += site.extent.log10();
+        if group.lines.len() < MOST_LINES && group.lines.last() != Some(&line) {
+            group.lines.push(line);
+        }
     }
+    let mut groups: Vec<Costly> = groups.into_values().collect();
     groups.sort_by(|a, b| b.log10_share.total_cmp(&a.log10_share));
     groups.truncate(MOST_COSTLY);
     groups

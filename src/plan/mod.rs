@@ -25,7 +25,8 @@
 //!   "sites": { "count", "kept", "log10_extent_without_noise",   as written
 //!              "log10_extent_merged",     noise merged, sites as written
 //!              "log10_extent", "extent" } of the run
-//!   "costliest": [ { "line", "kind", "count", "extent", "log10_share" }, … ]
+//!   "costliest": [ { "lines": [number, …], "kind", "count", "extent",
+//!                   "log10_share" }, … ]
 //!   "active": { "peak", "exact", "steps": [number, …] } | null
 //!   "inner_measurements": number | null
 //!   "measured": { "seconds": time it took,

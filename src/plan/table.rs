@@ -72,16 +72,16 @@ pub struct PlanSites {
     pub extent: Option<f64>,
 }
 
-/// Equal sites of one source line.
+/// Sites of one kind and nearly one extent.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct Costly {
-    /// Source line, from 1.
-    pub line: u32,
+    /// The first source lines they stand on, from 1.
+    pub lines: Vec<u32>,
     /// rotation, ccz or prepared.
     pub kind: String,
     /// How many.
     pub count: u64,
-    /// Extent of each.
+    /// Largest extent among them; all are within a thousandth.
     pub extent: f64,
     /// log₁₀ of their product.
     pub log10_share: f64,

@@ -19,6 +19,9 @@ pub fn text(plan: &Plan) -> String {
     let mut text = String::new();
     // Writing to a string cannot fail.
     let _ = head(plan, &mut text).and_then(|()| table(plan, &mut text));
+    if let Some(verdict) = verdict(plan) {
+        let _ = writeln!(text, "\n{verdict}");
+    }
     if let Some(solved) = &plan.choice {
         let _ = writeln!(text, "\n{}", chosen(solved));
     }
@@ -134,81 +137,125 @@ fn table(plan: &Plan, out: &mut String) -> std::fmt::Result {
         count => format!(", with terms {count} companion shots"),
     };
     writeln!(out, "for         {} shots{companion}\n", plan.shots)?;
+    let sampled = sampled_word(plan);
+    if plan.blocked.is_none() {
+        let dense = &plan.dense;
+        writeln!(
+            out,
+            "dense       {} a shot, {}; no δ: exact",
+            optional(dense.seconds_a_shot),
+            bytes_text(dense.memory_bytes)
+        )?;
+        if let Some(reason) = &dense.refused {
+            writeln!(out, "            not possible: {reason}")?;
+        }
+    }
     writeln!(
         out,
-        "{:<9}{:>10}{:>11}{:>11}{:>11}  {:<9}{:>10}",
-        "δ", "terms k", "memory", "a shot", "in all", "read-out", "dense"
+        "\n{:<7} {:>8} {:>10} {:>9} {:>11} {:>11} {:>11} takes",
+        "δ",
+        "terms k",
+        "memory",
+        "a shot",
+        format!("{sampled}, all"),
+        "dense, all",
+        match sampled {
+            "probe" => "walk, all",
+            _ => "probe, all",
+        }
     )?;
     let mut notes = Notes::default();
     for row in &plan.rows {
         table_row(plan, row, &mut notes, out)?;
     }
     writeln!(out)?;
-    notes.write(plan, out)
+    notes.write(out)
+}
+
+/// What to say of a circuit that cannot be run at any δ of the table.
+fn verdict(plan: &Plan) -> Option<String> {
+    if plan.rows.iter().any(|row| row.readout.is_some()) {
+        return None;
+    }
+    let row = plan
+        .rows
+        .iter()
+        .find(|row| row.delta.is_some_and(|delta| delta <= 0.1))
+        .or(plan.rows.first())?;
+    let least = if plan.blocked.is_some() {
+        "at least "
+    } else {
+        ""
+    };
+    Some(format!(
+        "This circuit cannot be run here as asked: δ = {} would take {} terms, {least}{} and \
+         {least}{}.",
+        format_plain(row.delta?),
+        terms_text(&row.walk),
+        row.walk
+            .seconds
+            .map_or("no known time".to_owned(), format_seconds),
+        bytes_text(row.walk.memory_bytes)
+    ))
+}
+
+/// The read-out of terms that the columns are about.
+fn sampled_word(plan: &Plan) -> &'static str {
+    match plan.rows.iter().any(|row| row.readout == Some("probe")) {
+        true => "probe",
+        false => "walk",
+    }
 }
 
 #[derive(Default)]
 struct Notes {
     extrapolated: bool,
-    refused: Vec<String>,
+    refused: Option<String>,
 }
 
 fn table_row(plan: &Plan, row: &Row, notes: &mut Notes, out: &mut String) -> std::fmt::Result {
-    // Where nothing can run, the numbers of the terms say how far it is off.
-    let terms = match row.readout {
-        Some("probe") => &row.probe,
-        _ => &row.walk,
+    let (terms, other) = match sampled_word(plan) {
+        "probe" => (&row.probe, &row.walk),
+        _ => (&row.walk, &row.probe),
     };
-    let chosen = row.chosen(&plan.dense).unwrap_or(terms);
-    notes.extrapolated |= chosen.extrapolated;
+    notes.extrapolated |= terms.extrapolated;
     let delta = match row.delta {
         Some(delta) => format_plain(delta),
         None => "average".to_owned(),
     };
-    let (count, memory) = (terms_text(terms), bytes_text(chosen.memory_bytes));
-    let readout = match row.readout {
-        Some(word) => word.to_owned(),
-        None => {
-            if let Some(reason) = &chosen.refused
-                && !notes.refused.contains(reason)
-            {
-                notes.refused.push(reason.clone());
-            }
-            "none".to_owned()
-        }
+    // Smaller δ only cost more: one reason is enough.
+    if notes.refused.is_none() {
+        notes.refused = terms.refused.clone();
+    }
+    let all = |estimate: &Estimate| match estimate.refused {
+        None => optional(estimate.seconds),
+        // What cannot be done is told in brackets.
+        Some(_) => match estimate.seconds {
+            Some(_) => format!("({})", optional(estimate.seconds)),
+            None => "-".to_owned(),
+        },
     };
-    let mark = if chosen.extrapolated { "*" } else { "" };
+    let mark = if terms.extrapolated { "*" } else { "" };
     writeln!(
         out,
-        "{delta:<9}{count:>10}{memory:>11}{:>11}{:>11}  {readout:<9}{:>10}",
-        format!("{}{mark}", optional(chosen.seconds_a_shot)),
-        optional(chosen.seconds),
-        dense_text(&plan.dense),
+        "{delta:<7} {:>8} {:>10} {:>9} {:>11} {:>11} {:>11} {}",
+        terms_text(terms),
+        bytes_text(terms.memory_bytes),
+        format!("{}{mark}", optional(terms.seconds_a_shot)),
+        all(terms),
+        all(&plan.dense),
+        all(other),
+        row.readout.unwrap_or("none")
     )
 }
 
 impl Notes {
-    fn write(&self, plan: &Plan, out: &mut String) -> std::fmt::Result {
-        for reason in &self.refused {
-            writeln!(out, "none: {reason}")?;
-        }
-        if let Some(reason) = &plan.dense.refused
-            && !self.refused.contains(reason)
-        {
-            writeln!(out, "dense is not possible: {reason}")?;
+    fn write(&self, out: &mut String) -> std::fmt::Result {
+        if let Some(reason) = &self.refused {
+            writeln!(out, "(in brackets) cannot be done: {reason}")?;
         }
         if self.extrapolated {
             writeln!(out, "* beyond what was measured, by extrapolation")?;
-        }
-        if plan
-            .rows
-            .iter()
-            .any(|row| row.readout == Some("dense") && row.delta.is_some())
-        {
-            writeln!(
-                out,
-                "dense is exact: λ = 0, no terms; k is what walk would take"
-            )?;
         }
         writeln!(
             out,
@@ -227,7 +274,7 @@ fn terms_text(estimate: &Estimate) -> String {
 }
 
 fn bytes_text(count: f64) -> String {
-    if count < 1e21 {
+    if count < 1e18 {
         bytes(count as u128)
     } else if count.is_finite() {
         format!("10^{:.0} B", count.log10())
@@ -237,29 +284,30 @@ fn bytes_text(count: f64) -> String {
 }
 
 fn optional(seconds: Option<f64>) -> String {
-    seconds.map_or("-".to_owned(), format_seconds)
-}
-
-fn dense_text(dense: &Estimate) -> String {
-    match (dense.refused.is_some(), dense.seconds) {
-        (false, Some(seconds)) => format_seconds(seconds),
-        (true, Some(seconds)) => format!("({})", format_seconds(seconds)),
-        (_, None) => "-".to_owned(),
-    }
+    seconds.map_or("-".to_owned(), |seconds| {
+        let text = format_seconds(seconds);
+        text.replace("years", "y").replace("days", "d")
+    })
 }
 
 fn costly_text(costly: &Costly) -> String {
     let Costly {
-        line,
+        lines,
         kind,
         count,
         extent,
         log10_share,
     } = costly;
-    let share = format_extent(log10_share * std::f64::consts::LN_10);
+    let shown: Vec<String> = lines.iter().take(4).map(u32::to_string).collect();
+    let plural = if lines.len() == 1 { "line" } else { "lines" };
+    let more = if lines.len() > 4 { ", …" } else { "" };
+    let place = format!("{plural} {}{more}", shown.join(", "));
     match count {
-        1 => format!("line {line}: {kind}, extent {extent:.4}"),
-        _ => format!("line {line}: {count} × {kind} of extent {extent:.4}, together {share}"),
+        1 => format!("1 {kind} of extent {extent:.4} ({place})"),
+        _ => {
+            let share = format_extent(log10_share * std::f64::consts::LN_10);
+            format!("{count} × {kind} of extent {extent:.4}, together {share} ({place})")
+        }
     }
 }
 

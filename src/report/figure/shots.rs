@@ -8,12 +8,12 @@ use super::svg::{Anchor, Shape, Svg, shortened, width_of};
 const WIDTH: f64 = 680.0;
 const RIGHT: f64 = 652.0;
 /// Height of one outcome.
-const ROW: f64 = 34.0;
+const ROW: f64 = 38.0;
 /// Space above the first panel.
 const HEAD: f64 = 74.0;
 /// Space around the rows of a panel: its title, and its axis.
 const ABOVE: f64 = 30.0;
-const BELOW: f64 = 52.0;
+const BELOW: f64 = 62.0;
 /// Most panels.
 const MOST_PANELS: usize = 4;
 /// Most bits shown of a register without counted words.
@@ -190,6 +190,12 @@ fn draw_panel(panel: &Panel, series: &[&Series], top: f64, svg: &mut Svg) {
         svg.line("grid", (at, first), (at, last));
         svg.text("small", (at, last + 18.0), Anchor::Middle, &label);
     }
+    svg.text(
+        "small",
+        ((left + RIGHT) / 2.0, last + 36.0),
+        Anchor::Middle,
+        "frequency",
+    );
     svg.polyline("axis", &[(left, first), (left, last), (RIGHT, last)]);
     for (index, (label, quantity)) in panel.rows.iter().enumerate() {
         let middle = first + (index as f64 + 0.5) * ROW;
