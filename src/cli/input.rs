@@ -6,7 +6,7 @@ use std::io::Read;
 use std::path::Path;
 
 use crate::circuit::{self, Circuit, ParseOptions};
-use crate::magic::{self, ScheduleOptions};
+use crate::magic::{self, Schedule, ScheduleOptions};
 use crate::noise::{self, NoiseFile};
 use crate::program::Program;
 
@@ -31,6 +31,14 @@ pub(super) struct Input {
     pub program: Program,
 }
 
+/// The same before it is compiled.
+pub(super) struct Scheduled {
+    pub texts: Texts,
+    pub circuit: Circuit,
+    pub title: Option<String>,
+    pub schedule: Schedule,
+}
+
 /// How the input is read.
 pub(super) struct Reading<'a> {
     pub circuit: &'a Path,
@@ -42,6 +50,23 @@ pub(super) struct Reading<'a> {
 
 /// Reads, checks and compiles the input; shows warnings and errors.
 pub(super) fn load(reading: &Reading<'_>) -> Result<Input, CommandError> {
+    let Scheduled {
+        texts,
+        circuit,
+        title,
+        schedule,
+    } = schedule(reading)?;
+    let program = Program::compile(schedule, circuit.qubits.len(), circuit.bits)?;
+    Ok(Input {
+        texts,
+        circuit,
+        title,
+        program,
+    })
+}
+
+/// Reads and checks the input and finds its sites; shows warnings and errors.
+pub(super) fn schedule(reading: &Reading<'_>) -> Result<Scheduled, CommandError> {
     let texts = Texts {
         circuit_name: reading.circuit.display().to_string(),
         circuit: read("circuit", reading.circuit)?,
@@ -86,14 +111,12 @@ pub(super) fn load(reading: &Reading<'_>) -> Result<Input, CommandError> {
             absorb: reading.absorb,
         },
     );
-    drop(noisy);
-    let program = Program::compile(schedule, qubits, circuit.bits)?;
     let title = noise_file.and_then(|file| file.title);
-    Ok(Input {
+    Ok(Scheduled {
         texts,
         circuit,
         title,
-        program,
+        schedule,
     })
 }
 

@@ -40,7 +40,9 @@
 //! This module knows result files, and nothing of how shots are drawn.
 
 pub mod estimate;
+pub mod figure;
 mod number;
+pub mod plan_text;
 mod summary;
 mod tally;
 mod text;
