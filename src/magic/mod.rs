@@ -14,7 +14,7 @@ pub mod extent;
 pub mod mixing;
 mod prepared;
 mod rotation;
-mod schedule;
+pub(crate) mod schedule;
 pub mod site;
 pub mod sparsify;
 mod splitting;

@@ -22,7 +22,7 @@ mod merge;
 mod prepare;
 mod rotations;
 #[cfg(test)]
-mod tests;
+pub(crate) mod tests;
 mod timeline;
 mod unobserved;
 mod walk;
