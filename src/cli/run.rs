@@ -16,8 +16,8 @@ use crate::readout::walk::{self, Walk};
 use crate::report::Summary;
 use crate::sampler::{Block, Drawing, Family, Interrupt, Sampler};
 use crate::store::{
-    AuditBlock, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError,
-    Writer, WriterOptions,
+    AuditBlock, Finished, Header, LocationRow, Part, ReductionHeader, RegisterHeader, ShotFile,
+    SiteRow, StoreError, Writer, WriterOptions,
 };
 
 use super::input::{self, Input, Reading};
@@ -162,6 +162,7 @@ impl<'a> Plan<'a> {
             delta: options.terms.is_none().then_some(options.delta),
             readout: choice.readout.word().to_owned(),
             log_extent,
+            reduction: Some(reduction(input)),
             terms: choice.terms,
             mixing_weight: choice.mixing_weight,
             shots_total: options.shots,
@@ -341,6 +342,21 @@ impl<'a> Plan<'a> {
         Err(CommandError::Interrupted(format!(
             "interrupted: {done} of {wanted} shots were finished and written"
         )))
+    }
+}
+
+/// What came of the non-Clifford gates, sites without effect on the compiled
+/// program included.
+fn reduction(input: &Input) -> ReductionHeader {
+    let counts = &input.reduction.counts;
+    let idle = input.program.all_sites().filter(|(_, kept)| !kept).count();
+    ReductionHeader {
+        log_extent_as_written: input.reduction.written.log_extent,
+        log_extent_after_noise: input.reduction.log_extent_after_noise,
+        sites_as_written: input.reduction.written.gates as u64,
+        sites_merged: counts.merged as u64,
+        sites_deterministic: (counts.deterministic + idle) as u64,
+        sites_unobservable: counts.unobservable as u64,
     }
 }
 

@@ -30,6 +30,7 @@ mod walk;
 use crate::noise::NoisyCircuit;
 
 use super::Schedule;
+pub(super) use rotations::quarters_and_rest;
 use timeline::Timeline;
 
 /// What [`schedule()`] may do.

@@ -18,7 +18,7 @@ use smallvec::smallvec;
 
 use crate::circuit::{Clifford, Pauli, PauliProduct};
 use crate::clifford::frame::Frame;
-use crate::clifford::pauli::{PauliString, bit, ones, toggle, words_for};
+use crate::clifford::pauli::{PauliString, bit, toggle, words_for};
 use crate::program::axis::ones_and;
 
 /// The frame, its certain columns, and the coordinates of open axes.
@@ -233,6 +233,7 @@ mod tests {
     use rand_pcg::Pcg64;
 
     use super::*;
+    use crate::clifford::pauli::ones;
 
     /// Followed axes have the coordinates the frame gives them after any mix of
     /// gates and changes of basis, and certain columns stay certain: on |0…0⟩
