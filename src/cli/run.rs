@@ -117,13 +117,6 @@ impl<'a> Plan<'a> {
             None if choice.readout == Readout::Dense => 0,
             None => options.shots,
         };
-        if companion > 0 && input.program.has_damping() {
-            return Err(CommandError::Usage(
-                "companion shots cannot be drawn of a circuit that damps an entangled qubit: \
-                 leave out --companion"
-                    .to_owned(),
-            ));
-        }
         let part = options
             .part
             .map_or(Part::default(), |(index, count)| Part { index, count });
@@ -244,13 +237,12 @@ impl<'a> Plan<'a> {
             return Ok(());
         }
         let sparsifier = Sparsifier::new(program.sites());
-        let single = Settings::single();
         let write = |block: &Block| Ok(writer.append_companion(&block.rows)?);
         let mut progress = Shown::new("companion", self.companion_count(), options.quiet);
         let sampler = self.sampler(program, &sparsifier, MAX_SLOTS, false, Drawing::Companion);
-        with_probe(
+        with_walk(
             program,
-            single,
+            1,
             Sample {
                 sampler: &sampler,
                 family: Family::Companion,
@@ -395,7 +387,7 @@ fn with_walk<S: FnMut(&Block) -> Result<(), CommandError>>(
     sample: Sample<'_, '_, S>,
 ) -> Result<u64, CommandError> {
     let (sites, slots) = (program.sites(), program.slots());
-    let settings = walk::Settings::new(sites, terms);
+    let settings = walk::Settings::new(sites, terms, program.log_damping_trace());
     match slots {
         0..=64 => sample.with(|| Walk::<1>::new(sites, slots, settings)),
         65..=128 => sample.with(|| Walk::<2>::new(sites, slots, settings)),

@@ -29,7 +29,7 @@ pub use schedule::{ScheduleOptions, schedule};
 pub use site::{
     CczSite, PreparedMember, PreparedSite, RotationMember, RotationSite, Site, SiteKind, Stabiliser,
 };
-pub use sparsify::{Draw, Sparsifier};
+pub use sparsify::{Components, Draw, Sparsifier, draw_plane};
 
 /// A noisy circuit whose non-Clifford gates have become sites.
 #[derive(Debug, Clone)]

@@ -270,14 +270,31 @@ impl Program {
 
     /// Whether amplitude damping may meet an entangled qubit.
     pub fn has_damping(&self) -> bool {
-        let damps = |step: &Step| matches!(step, Step::Damp { .. });
-        self.first.steps.iter().any(damps)
-            || (self.branches()
-                && self
-                    .schedule
-                    .instructions
-                    .iter()
-                    .any(|instruction| matches!(instruction.kind, Kind::Damping { .. })))
+        self.log_damping_trace() > 0.0
+    }
+
+    /// log of a bound on the trace of the companion circuit, in which damping of
+    /// an entangled qubit is the map sρ + (1−s)·|0⟩⟨0|ρ|0⟩⟨0| + K1ρK1†, s = √(1−γ):
+    /// the sum of ln(1 + s(1−s)). Without branches over the dampings that meet an
+    /// entangled qubit, else over all.
+    pub fn log_damping_trace(&self) -> f64 {
+        let log_trace = |gamma: f64| {
+            let s = (1.0 - gamma).sqrt();
+            // 1 at the axis value 0, s + γ at the value 1.
+            (s * (1.0 - s)).ln_1p()
+        };
+        if self.branches() {
+            let damping = |instruction: &crate::magic::Instruction| match instruction.kind {
+                Kind::Damping { gamma, .. } => log_trace(gamma),
+                _ => 0.0,
+            };
+            return self.schedule.instructions.iter().map(damping).sum();
+        }
+        let damping = |step: &Step| match *step {
+            Step::Damp { gamma, .. } => log_trace(gamma),
+            _ => 0.0,
+        };
+        self.first.steps.iter().map(damping).sum()
     }
 
     /// Slots a register needs: exact without branches, else an upper bound.

@@ -43,10 +43,25 @@ fn sample<R: Register + Send>(
     seed: u64,
     make: impl Fn() -> R + Sync,
 ) -> BTreeMap<u32, f64> {
-    sample_counting(program, family, drawing, shots, seed, make, &mut 0)
+    sample_counting(
+        program,
+        family,
+        drawing,
+        shots,
+        seed,
+        make,
+        &mut Audit::default(),
+    )
 }
 
-/// Counts of recorded bits; adds the number of clipped shots to `clipped`.
+/// What the shots of a call had in common.
+#[derive(Default)]
+struct Audit {
+    clipped: u64,
+    attempts: u64,
+}
+
+/// Counts of recorded bits; adds to `audit`.
 fn sample_counting<R: Register + Send>(
     program: &Program,
     family: Family,
@@ -54,7 +69,7 @@ fn sample_counting<R: Register + Send>(
     shots: u64,
     seed: u64,
     make: impl Fn() -> R + Sync,
-    clipped: &mut u64,
+    audit: &mut Audit,
 ) -> BTreeMap<u32, f64> {
     let sparsifier = Sparsifier::new(program.sites());
     let recorded = (0..program.bits() as u32).collect();
@@ -67,11 +82,10 @@ fn sample_counting<R: Register + Send>(
         &Interrupt::new(),
         &mut Silent,
         |block: &Block| -> Result<(), SampleError> {
-            *clipped += block
-                .audit
-                .iter()
-                .filter(|shot| shot.register.clipped)
-                .count() as u64;
+            for shot in &block.audit {
+                audit.clipped += u64::from(shot.register.clipped);
+                audit.attempts += u64::from(shot.attempts);
+            }
             for row in &block.rows.bits {
                 *counts.entry(*row as u32).or_insert(0.0) += 1.0;
             }
@@ -171,22 +185,21 @@ fn mixing_law(
     seed: u64,
 ) -> BTreeMap<u32, f64> {
     let shots = 500_000;
-    let companion = sample(
+    let settings = walk::Settings::new(program.sites(), 1, program.log_damping_trace());
+    let mut audit = Audit::default();
+    let companion = sample_counting(
         program,
         Family::Companion,
         Drawing::Companion,
         shots,
         seed,
-        || {
-            Probe::<1>::new(
-                program.sites(),
-                program.slots(),
-                probe::Settings::single(),
-                &NEVER,
-            )
-        },
+        || Walk::<1>::new(program.sites(), program.slots(), settings),
+        &mut audit,
     );
-    let weight = mixing_weight(log_extent(program.sites()), terms);
+    // [(k − 1)·P + ξ·t·P_comp]/(k − 1 + ξ·t), t the trace of the companion.
+    let trace = settings.trace(shots, audit.attempts);
+    let log_extent = log_extent(program.sites()) + trace.ln();
+    let weight = mixing_weight(log_extent, terms);
     let mixed = |bits: u32| companion.get(&bits).copied().unwrap_or(0.0) / shots as f64;
     ideal
         .iter()
@@ -197,16 +210,16 @@ fn mixing_law(
 
 /// The basis walk follows the mixing law exactly, whatever comes between its
 /// sites: measurements, feedback, resets, conditional gates, rotations by any
-/// angle. Small k on purpose, where the companion's share is large. 40,000
+/// angle, amplitude damping of entangled qubits. Small k on purpose, where the companion's share is large. 40,000
 /// shots of each circuit.
 #[test]
 fn walk_shots_follow_the_mixing_law() {
     let mut rng = Pcg64::seed_from_u64(4);
-    let (mut tested, mut clipped) = (0, 0);
+    let (mut tested, mut audit) = (0, Audit::default());
     for round in 0..80 {
         let qubits = 2 + round % 3;
         let menu = Menu {
-            damping: false,
+            damping: round % 4 < 2,
             generic_angles: round % 2 == 0,
             branches: round % 3 == 0,
             instructions: 14 + 4 * qubits,
@@ -220,7 +233,7 @@ fn walk_shots_follow_the_mixing_law() {
         }
         tested += 1;
         let terms = [2, 3, 5, 8][round % 4];
-        let settings = walk::Settings::new(program.sites(), terms);
+        let settings = walk::Settings::new(program.sites(), terms, program.log_damping_trace());
         let (slots, seed) = (program.slots(), round as u64);
         let drawing = Drawing::Terms(terms as usize);
         let shots = 40_000;
@@ -231,7 +244,7 @@ fn walk_shots_follow_the_mixing_law() {
             shots,
             seed,
             || Walk::<1>::new(program.sites(), slots, settings),
-            &mut clipped,
+            &mut audit,
         );
         let law = mixing_law(&program, &reference(&circuit, qubits), terms, seed);
         let found = deviation(&counts, &law);
@@ -242,7 +255,11 @@ fn walk_shots_follow_the_mixing_law() {
     }
     assert!(tested > 45, "{tested} circuits had magic");
     // Caps are for about one in a million starts, one in a thousand ends.
-    assert!(clipped < tested * 40, "{clipped} shots were clipped");
+    assert!(
+        audit.clipped < tested * 40,
+        "{} shots were clipped",
+        audit.clipped
+    );
 }
 
 /// Terms follow the mixing law P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), with
@@ -456,7 +473,7 @@ fn conditional_measurements_and_gates_keep_the_weight_of_paths() {
             deviation(&probed, &law) < LIMIT,
             "probe: {probed:?} for {law:?}"
         );
-        let settings = walk::Settings::new(program.sites(), terms);
+        let settings = walk::Settings::new(program.sites(), terms, program.log_damping_trace());
         let walked = sample(&program, Family::Shots, drawing, 60_000, 6, || {
             Walk::<1>::new(program.sites(), slots, settings)
         });

@@ -112,6 +112,12 @@ impl Factor {
         self
     }
 
+    /// × number.
+    #[inline(always)]
+    pub(crate) fn multiply(&mut self, number: Complex64) {
+        self.weight *= number;
+    }
+
     /// × number; the powers of √2 are folded in, so that a caller who
     /// normalises now and then meets no overflow.
     pub(crate) fn scale(&mut self, number: Complex64) {
