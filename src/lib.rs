@@ -8,7 +8,7 @@
 //! place) → [`magic`] (sites and ensembles) → [`clifford`] (frame and terms) →
 //! [`program`] (steps and flip sets) → [`exact`] (exact laws of small circuits)
 //! → [`readout`] (registers) → [`sampler`] (shots) → [`store`] (result file) →
-//! [`report`] (summaries) → [`cli`].
+//! [`plan`] (costs) → [`report`] (summaries) → [`cli`].
 
 #![warn(missing_docs)]
 
@@ -18,6 +18,7 @@ pub mod clifford;
 pub mod exact;
 pub mod magic;
 pub mod noise;
+pub mod plan;
 pub mod program;
 pub mod readout;
 pub mod report;

@@ -10,8 +10,11 @@ mod input;
 mod machine;
 mod message;
 mod options;
+mod picture;
 mod places;
+mod plan;
 mod progress;
+mod rehearse;
 mod run;
 mod show;
 mod verify;
@@ -71,6 +74,14 @@ enum CommandError {
     /// The summary could not be printed.
     #[error("cannot print the summary: {0}")]
     Print(std::io::Error),
+    /// A picture could not be written.
+    #[error("cannot write the figure {}: {error}", .path.display())]
+    Picture {
+        /// Where to.
+        path: std::path::PathBuf,
+        /// Why.
+        error: std::io::Error,
+    },
     /// Ctrl-C.
     #[error("{0}")]
     Interrupted(String),
@@ -89,6 +100,7 @@ impl CommandError {
             | CommandError::Store(_)
             | CommandError::Stopped { .. }
             | CommandError::Rejected(_)
+            | CommandError::Picture { .. }
             | CommandError::Print(_) => 1,
             CommandError::Interrupted(_) => 130,
         }
@@ -109,6 +121,7 @@ pub fn main() -> ExitCode {
     let result = match &options.command {
         Command::Run(run) => run::run(run),
         Command::Verify(verify) => verify::verify(verify),
+        Command::Plan(plan) => plan::plan(plan),
         Command::Show(show) => show::show(show),
     };
     match result {
@@ -126,4 +139,14 @@ fn refuse(texts: &input::Texts, diagnostics: &[Diagnostic]) -> CommandError {
         message::diagnostic(texts, diagnostic);
     }
     CommandError::Input(diagnostics.len())
+}
+
+/// Prints a text on stdout. A closed pipe is no error.
+fn print(text: &str) -> Result<(), CommandError> {
+    use std::io::{ErrorKind, Write};
+    let mut stdout = std::io::stdout();
+    match writeln!(stdout, "{}", text.trim_end()).and_then(|()| stdout.flush()) {
+        Err(error) if error.kind() != ErrorKind::BrokenPipe => Err(CommandError::Print(error)),
+        _ => Ok(()),
+    }
 }

@@ -6,22 +6,24 @@ use std::path::Path;
 use crate::circuit::Register as BitRegister;
 use crate::magic::Sparsifier;
 use crate::magic::mixing::log_extent;
+use crate::plan::auto::{self, Work};
 use crate::program::Program;
-use crate::readout::choice::{self, Choice, Readout, TermCount, Wish};
+use crate::readout::choice::{Choice, Readout, TermCount, Wish};
 use crate::readout::walk;
 use crate::report::Summary;
 use crate::sampler::{Block, Drive, audit};
 use crate::store::{
-    AuditBlock, Damped, Finished, Header, Part, RegisterHeader, ShotFile, StoreError, Writer,
-    WriterOptions,
+    AuditBlock, Damped, Finished, Header, Part, ReductionHeader, RegisterHeader, ShotFile,
+    StoreError, Writer, WriterOptions,
 };
 
 use super::CommandError;
 use super::input::{self, Input, Reading};
 use super::machine::{INTERRUPT, available_memory, catch_interrupts, start_threads};
-use super::options::{ReadoutOption, Run, Switch, TermsOption};
+use super::options::{DEFAULT_DELTA, Run, Switch, TermsOption};
 use super::places::Places;
 use super::progress::Shown;
+use super::rehearse;
 
 /// Draws shots of a circuit into a result file.
 pub(super) fn run(options: &Run) -> Result<(), CommandError> {
@@ -49,33 +51,17 @@ pub(super) fn run(options: &Run) -> Result<(), CommandError> {
         absorb: options.absorb == Switch::On,
     })?;
     let threads = start_threads(options.threads)?;
-    let log_extent = log_extent(input.program.sites());
-    let wish = Wish {
-        readout: match options.readout {
-            ReadoutOption::Auto => None,
-            ReadoutOption::Probe => Some(Readout::Probe),
-            ReadoutOption::Walk => Some(Readout::Walk),
-            ReadoutOption::Dense => Some(Readout::Dense),
-        },
-        delta: options.delta,
-        terms: match options.terms {
-            None => TermCount::FromDelta,
-            Some(TermsOption::Average) => TermCount::Average,
-            Some(TermsOption::Fixed(terms)) => TermCount::Fixed(terms),
-        },
-        threads,
-        memory: available_memory(),
-    };
-    let choice = choice::choose(&input.program, log_extent, &wish)?;
-    let seed = options.seed.unwrap_or_else(rand::random);
-    let plan = Plan::new(options, &input, &choice, log_extent, seed)?;
     catch_interrupts()?;
-    plan.draw(options)?;
+    let log_extent = log_extent(input.program.sites());
+    let decided = decide(options, &input, log_extent, threads)?;
+    let seed = options.seed.unwrap_or_else(rand::random);
+    let job = Job::new(options, &input, &decided, log_extent, seed)?;
+    job.draw(options)?;
     if !options.quiet {
         let file = ShotFile::open(&options.out)?;
         super::show::print(&Summary::from_file(&file)?, options.json)?;
     }
-    plan.ending()
+    job.ending()
 }
 
 /// Whether two paths lead to one existing file.
@@ -86,8 +72,65 @@ fn same_file(left: &Path, right: &Path) -> bool {
     }
 }
 
+/// Read-out and accuracy of a run.
+pub(super) struct Decided {
+    pub choice: Choice,
+    /// δ; none where the number of terms was given, or time and memory allow the
+    /// exact read-out.
+    pub delta: Option<f64>,
+}
+
+/// Decides on the read-out, and on δ where it is left to a limit of time or
+/// memory.
+fn decide(
+    options: &Run,
+    input: &Input,
+    log_extent: f64,
+    threads: usize,
+) -> Result<Decided, CommandError> {
+    let limit = options.memory.unwrap_or(u64::MAX);
+    let open = options.delta.is_none() && options.terms.is_none();
+    let mut wish = Wish {
+        readout: options.readout.wanted(),
+        delta: options.delta.unwrap_or(DEFAULT_DELTA),
+        terms: match options.terms {
+            None => TermCount::FromDelta,
+            Some(TermsOption::Average) => TermCount::Average,
+            Some(TermsOption::Fixed(terms)) => TermCount::Fixed(terms),
+        },
+        threads,
+        memory: available_memory().min(limit),
+    };
+    let mut delta = options.terms.is_none().then_some(wish.delta);
+    if open && (options.budget.is_some() || options.memory.is_some()) {
+        let solved = rehearse::within_limits(options, input, log_extent, threads)?;
+        wish.readout = Some(solved.readout);
+        wish.delta = solved.delta.unwrap_or(DEFAULT_DELTA);
+        delta = solved.delta;
+    }
+    let work = Work {
+        shots: options.shots,
+        companion: options.companion,
+    };
+    let sparsifier = Sparsifier::new(input.program.sites());
+    // Parts of a run must agree on the read-out: nothing is timed for them.
+    let may_time = options.part.is_none();
+    let drive = || rehearse::drive(input, &sparsifier, 0);
+    let choice = auto::choose(
+        &input.program,
+        log_extent,
+        &wish,
+        work,
+        may_time,
+        &INTERRUPT,
+        drive,
+    )?;
+    rehearse::stopped()?;
+    Ok(Decided { choice, delta })
+}
+
 /// One run, decided.
-struct Plan<'a> {
+pub(super) struct Job<'a> {
     input: &'a Input,
     choice: Choice,
     header: Header,
@@ -102,14 +145,15 @@ struct Plan<'a> {
     companion_drawn: Cell<(u64, u64)>,
 }
 
-impl<'a> Plan<'a> {
-    fn new(
+impl<'a> Job<'a> {
+    pub(super) fn new(
         options: &Run,
         input: &'a Input,
-        choice: &Choice,
+        decided: &Decided,
         log_extent: f64,
         seed: u64,
     ) -> Result<Self, CommandError> {
+        let choice = &decided.choice;
         let companion = match options.companion {
             Some(count) => count,
             None if choice.readout == Readout::Dense => 0,
@@ -118,17 +162,8 @@ impl<'a> Plan<'a> {
         let part = options
             .part
             .map_or(Part::default(), |(index, count)| Part { index, count });
-        let registers: Vec<&BitRegister> = input
-            .circuit
-            .registers
-            .iter()
-            .filter(|register| register.recorded)
-            .collect();
-        let recorded = registers
-            .iter()
-            .flat_map(|register| register.first..register.first + register.width)
-            .map(|bit| bit as u32)
-            .collect();
+        let registers = recorded_registers(input);
+        let recorded = recorded_bits(input);
         let mut settings = vec![(
             "absorb".to_owned(),
             if options.absorb == Switch::On {
@@ -148,7 +183,7 @@ impl<'a> Plan<'a> {
             settings.push(("probes".to_owned(), probe.probes.to_string()));
         }
         let texts = &input.texts;
-        let places = Places::new(input);
+        let places = Places::new(&input.circuit);
         let header = Header {
             circuit_name: texts.circuit_name.clone(),
             circuit: texts.circuit.clone(),
@@ -157,9 +192,10 @@ impl<'a> Plan<'a> {
             title: input.title.clone(),
             qubits: Some(input.circuit.qubits.len() as u64),
             seed,
-            delta: options.terms.is_none().then_some(options.delta),
+            delta: decided.delta,
             readout: choice.readout.word().to_owned(),
             log_extent,
+            reduction: Some(reduction(input)),
             terms: choice.terms,
             mixing_weight: choice.mixing_weight,
             shots_total: options.shots,
@@ -173,14 +209,14 @@ impl<'a> Plan<'a> {
                     width: register.width,
                 })
                 .collect(),
-            sites: places.sites(),
+            sites: places.sites(&input.program),
             locations: if options.faults {
-                places.locations()
+                places.locations(&input.program)
             } else {
                 Vec::new()
             },
         };
-        Ok(Plan {
+        Ok(Job {
             input,
             choice: *choice,
             header,
@@ -196,13 +232,7 @@ impl<'a> Plan<'a> {
 
     /// Draws all shots and writes the file.
     fn draw(&self, options: &Run) -> Result<(), CommandError> {
-        let writer_options = WriterOptions {
-            force: options.force,
-            companion: !self.companion.is_empty(),
-            faults: options.faults,
-        };
-        let mut writer = Writer::create(&options.out, &self.header, writer_options)
-            .map_err(CommandError::Output)?;
+        let mut writer = self.open(options)?;
         let program = &self.input.program;
         // Companion shots come first: they are cheap, and an interrupted run
         // can then be corrected as well.
@@ -226,6 +256,16 @@ impl<'a> Plan<'a> {
             Err(error) => return Err(error),
         }
         Ok(())
+    }
+
+    /// The result file, empty.
+    pub(super) fn open(&self, options: &Run) -> Result<Writer, CommandError> {
+        let writer_options = WriterOptions {
+            force: options.force,
+            companion: !self.companion.is_empty(),
+            faults: options.faults,
+        };
+        Writer::create(&options.out, &self.header, writer_options).map_err(CommandError::Output)
     }
 
     fn draw_companion(
@@ -321,11 +361,7 @@ impl<'a> Plan<'a> {
                 .iter()
                 .filter(|shot| shot.register.clipped)
                 .count() as u64;
-            writer.append_shots(&block.rows)?;
-            writer.append_audit(&AuditBlock::new(&block.audit))?;
-            if options.faults {
-                writer.append_faults(&block.faults)?;
-            }
+            append(writer, block, options.faults)?;
             self.clipped.set(self.clipped.get() + clipped);
             self.finished
                 .set(self.finished.get() + block.rows.shots as u64);
@@ -354,4 +390,43 @@ impl<'a> Plan<'a> {
             "interrupted: {done} of {wanted} shots were finished and written"
         )))
     }
+}
+
+/// Writes finished shots.
+pub(super) fn append(writer: &mut Writer, block: &Block, faults: bool) -> Result<(), CommandError> {
+    writer.append_shots(&block.rows)?;
+    writer.append_audit(&AuditBlock::new(&block.audit))?;
+    if faults {
+        writer.append_faults(&block.faults)?;
+    }
+    Ok(())
+}
+
+/// What came of the non-Clifford gates, sites without effect on the compiled
+/// program included.
+fn reduction(input: &Input) -> ReductionHeader {
+    let counts = &input.reduction.counts;
+    let idle = input.program.all_sites().filter(|(_, kept)| !kept).count();
+    ReductionHeader {
+        log_extent_as_written: input.reduction.written.log_extent,
+        log_extent_after_noise: input.reduction.log_extent_after_noise,
+        sites_as_written: input.reduction.written.gates as u64,
+        sites_merged: counts.merged as u64,
+        sites_deterministic: (counts.deterministic + idle) as u64,
+        sites_unobservable: counts.unobservable as u64,
+    }
+}
+
+fn recorded_registers(input: &Input) -> Vec<&BitRegister> {
+    let registers = input.circuit.registers.iter();
+    registers.filter(|register| register.recorded).collect()
+}
+
+/// The classical bits that are recorded, register by register.
+pub(super) fn recorded_bits(input: &Input) -> Vec<u32> {
+    recorded_registers(input)
+        .iter()
+        .flat_map(|register| register.first..register.first + register.width)
+        .map(|bit| bit as u32)
+        .collect()
 }

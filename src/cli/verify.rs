@@ -13,7 +13,7 @@ use super::input::{self, Input, Reading};
 use super::machine::{INTERRUPT, available_memory, catch_interrupts, start_threads};
 use super::options::{ReadoutOption, Switch, TermsOption, Verify};
 use super::progress::Shown;
-use super::{CommandError, refuse, show};
+use super::{CommandError, refuse};
 
 /// Draws shots and tests them.
 pub(super) fn verify(options: &Verify) -> Result<(), CommandError> {
@@ -87,7 +87,7 @@ pub(super) fn verify(options: &Verify) -> Result<(), CommandError> {
         } else {
             report.to_string()
         };
-        show::print_text(&text)?;
+        super::print(&text)?;
     }
     conclude(&report, choice.readout)
 }

@@ -18,6 +18,7 @@ mod axis;
 mod compile;
 mod faults;
 mod flips;
+mod reduce;
 mod step;
 mod turns;
 
@@ -30,6 +31,7 @@ use crate::magic::{Kind, Schedule, Site, SiteKind};
 
 pub use faults::{ChoiceTable, FaultGroup, FaultPlace, Location, LocationKind};
 pub use flips::{SetArena, SetId};
+pub use reduce::{Reduced, SiteCounts, reduce};
 pub use step::{AffineInput, Outcome, Primitive, Reading, Step};
 
 /// Slots a register may have at most.

@@ -4,7 +4,7 @@ use std::fmt::{self, Display, Formatter};
 
 use super::Estimate;
 use super::number::{format_estimate, format_extent, format_plain};
-use super::summary::{NormCheck, Outcome, Quantity, RegisterSummary, Summary};
+use super::summary::{NormCheck, Outcome, Quantity, Reduction, RegisterSummary, Summary};
 
 /// Most bits of a register that are listed one by one.
 const MOST_BITS: usize = 16;
@@ -28,6 +28,9 @@ impl Display for Summary {
             )?;
         }
         line(out, "sites", &self.sites_line())?;
+        if let Some(reduced) = self.reduced_line() {
+            line(out, "reduced", &reduced)?;
+        }
         line(out, "extent ξ", &self.extent_line())?;
         line(out, "precision", &self.precision())?;
         line(out, "shots", &self.shots_line())?;
@@ -120,6 +123,11 @@ impl Summary {
     }
 
     fn sites_line(&self) -> String {
+        if let Some(reduction) = &self.sites.reduction {
+            let gates = reduction.as_written;
+            let noun = if gates == 1 { "gate" } else { "gates" };
+            return format!("{} left of {gates} non-Clifford {noun}", self.sites.kept);
+        }
         let count = self.sites.count;
         let places = if count == 1 { "place" } else { "places" };
         match count - self.sites.kept {
@@ -128,8 +136,37 @@ impl Summary {
         }
     }
 
+    /// How sites went, if any did.
+    fn reduced_line(&self) -> Option<String> {
+        let Reduction {
+            merged,
+            deterministic,
+            unobservable,
+            ..
+        } = self.sites.reduction.as_ref()?;
+        let ways = [
+            (merged, "merged"),
+            (deterministic, "on a known axis"),
+            (unobservable, "unobservable"),
+        ];
+        let ways: Vec<String> = ways
+            .iter()
+            .filter(|(count, _)| **count > 0)
+            .map(|(count, way)| format!("{count} {way}"))
+            .collect();
+        (!ways.is_empty()).then(|| ways.join(", "))
+    }
+
     fn extent_line(&self) -> String {
         let extent = |log10: f64| format_extent(log10 * std::f64::consts::LN_10);
+        if let Some(reduction) = &self.sites.reduction {
+            return format!(
+                "{} as written, {} with noise merged, {} in this run",
+                extent(reduction.log10_extent_as_written),
+                extent(reduction.log10_extent_after_noise),
+                extent(self.sites.log10_extent)
+            );
+        }
         format!(
             "{} without noise, {} in this run",
             extent(self.sites.log10_extent_without_noise),

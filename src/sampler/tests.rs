@@ -26,7 +26,7 @@ use crate::magic::{ScheduleOptions, Sparsifier, schedule};
 use crate::noise::{
     Instruction, Kind, NoisyCircuit, PauliChannel, PauliChoices, PauliWord, ReadoutFlip,
 };
-use crate::program::Program;
+use crate::program::{Program, reduce};
 use crate::readout::Register;
 use crate::readout::dense::Dense;
 use crate::readout::probe::{self, Probe, acceptance_cap};
@@ -126,6 +126,14 @@ fn compile(circuit: &NoisyCircuit, qubits: usize, absorb: bool) -> Program {
     Program::compile(schedule, qubits, qubits + 2).expect("a small circuit compiles")
 }
 
+/// The same with its sites reduced first.
+fn compile_reduced(circuit: &NoisyCircuit, qubits: usize, absorb: bool) -> Program {
+    let schedule = schedule(circuit, qubits, &ScheduleOptions { absorb });
+    let recorded = vec![true; qubits + 2];
+    let reduced = reduce(schedule, qubits, &recorded).schedule;
+    Program::compile(reduced, qubits, qubits + 2).expect("a small circuit compiles")
+}
+
 /// Largest deviation that passes: one-sided false-alarm rate 3e-7 a test
 /// (normal law).
 const LIMIT: f64 = 5.0;
@@ -146,7 +154,11 @@ fn dense_shots_follow_the_density_matrix() {
             magic: 6,
         };
         let circuit = random_circuit(&mut rng, qubits as u32, menu);
-        let program = compile(&circuit, qubits, round % 5 != 4);
+        let program = if round % 4 < 2 {
+            compile(&circuit, qubits, round % 5 != 4)
+        } else {
+            compile_reduced(&circuit, qubits, round % 5 != 4)
+        };
         let law = reference(&circuit, qubits);
         let active = program.peak_active().min(16);
         let counts = sample(
@@ -227,7 +239,11 @@ fn walk_shots_follow_the_mixing_law() {
             magic: 5,
         };
         let circuit = random_circuit(&mut rng, qubits as u32, menu);
-        let program = compile(&circuit, qubits, round % 5 != 4);
+        let program = if round % 4 < 2 {
+            compile(&circuit, qubits, round % 5 != 4)
+        } else {
+            compile_reduced(&circuit, qubits, round % 5 != 4)
+        };
         let extent = log_extent(program.sites());
         if extent < 0.05 {
             continue;
@@ -396,6 +412,52 @@ fn mean_norm_is_exact_on_thirty_sites() {
         error < 0.1 * expected,
         "the test could not see an error of half the mean"
     );
+}
+
+/// A Pauli that comes with an outcome before a qubit was fresh must not reach
+/// the state the qubit takes then: resetting qubit 1 and then qubit 0 leaves
+/// |00⟩ whatever the first reset read, t and t† cancel on |+⟩ next to a |0⟩, and
+/// the qubit always reads 0. On the schedule as it is: a reduced one has no site
+/// left.
+#[test]
+fn what_a_reset_read_does_not_reach_the_state_prepared_next() {
+    let gates =
+        |gates: &[Clifford]| -> Vec<Kind> { gates.iter().cloned().map(Kind::Clifford).collect() };
+    let turn = |sign: f64| Kind::Rotation {
+        axis: smallvec![(1, Pauli::Z)],
+        angle: sign * std::f64::consts::FRAC_PI_4,
+    };
+    let kinds = [
+        gates(&[Clifford::H(0), Clifford::Cz(0, 1)]),
+        vec![Kind::Reset { qubit: 1 }, Kind::Reset { qubit: 0 }],
+        gates(&[Clifford::H(1)]),
+        vec![turn(1.0)],
+        gates(&[Clifford::Cx(0, 1)]),
+        vec![turn(-1.0)],
+        gates(&[Clifford::H(1)]),
+        vec![Kind::Measure {
+            qubit: 1,
+            bit: Some(1),
+            flip: ReadoutFlip::default(),
+        }],
+    ];
+    let instructions = kinds.into_iter().flatten().map(|kind| Instruction {
+        kind,
+        condition: None,
+        operation: 0,
+    });
+    let circuit = NoisyCircuit {
+        instructions: instructions.collect(),
+        warnings: Vec::new(),
+    };
+    let program = compile(&circuit, 2, true);
+    assert_eq!(program.sites().len(), 2);
+    let active = program.peak_active();
+    let counts = sample(&program, Family::Shots, Drawing::Members, 200, 8, || {
+        Dense::new(program.sites(), active)
+    });
+    assert_eq!(counts, BTreeMap::from([(0, 200.0)]));
+    assert_eq!(compile_reduced(&circuit, 2, true).sites().len(), 0);
 }
 
 /// Paths that differ in what they execute or measure must keep their weights:
