@@ -176,6 +176,8 @@ impl<'p> Sampler<'p> {
                     .sum();
                 sink(&block)?;
                 done += block.rows.shots as u64;
+                let peak = block.audit.iter().map(|shot| shot.peak_active).max();
+                progress.active(peak.unwrap_or(0));
                 progress.advance(block.rows.shots as u64, attempts);
                 if let Some(error) = block.error {
                     return Err(error.into());
