@@ -5,7 +5,8 @@ use std::path::Path;
 use shottower::report::Summary;
 use shottower::sampler::Rows;
 use shottower::store::{
-    AuditBlock, Finished, Header, Part, RegisterHeader, ShotFile, SiteRow, Writer, WriterOptions,
+    AuditBlock, Finished, Header, Part, ReductionHeader, RegisterHeader, ShotFile, SiteRow, Writer,
+    WriterOptions,
 };
 
 fn register(name: &str, role: &str, width: usize) -> RegisterHeader {
@@ -130,6 +131,43 @@ Corrected: the companion's share λ taken out.
 ";
     assert_eq!(text, expected);
     assert!(text.lines().all(|line| line.chars().count() <= 80));
+}
+
+/// What came of the non-Clifford gates, where the file tells.
+#[test]
+fn what_came_of_the_sites() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("bench.h5");
+    let file = write(&path, |header| {
+        header.reduction = Some(ReductionHeader {
+            log_extent_as_written: 9f64.ln(),
+            log_extent_after_noise: 5f64.ln(),
+            sites_as_written: 12,
+            sites_merged: 4,
+            sites_deterministic: 1,
+            sites_unobservable: 5,
+        });
+    });
+    let summary = Summary::from_file(&file).unwrap();
+    let text = summary.to_string();
+    for line in [
+        "sites       2 left of 12 non-Clifford gates\n",
+        "reduced     4 merged, 1 on a known axis, 5 unobservable\n",
+        "extent ξ    9.0000 as written, 5.0000 with noise merged, 3.0000 in this run\n",
+    ] {
+        assert!(text.contains(line), "{text}");
+        assert!(line.chars().count() <= 82, "{line}");
+    }
+    let json: serde_json::Value = serde_json::from_str(&summary.to_json()).unwrap();
+    let reduction = &json["sites"]["reduction"];
+    assert_eq!(reduction["as_written"], 12);
+    assert_eq!(reduction["merged"], 4);
+    assert_eq!(reduction["deterministic"], 1);
+    assert_eq!(reduction["unobservable"], 5);
+    let log10 = reduction["log10_extent_as_written"].as_f64().unwrap();
+    assert!((log10 - 9f64.log10()).abs() < 1e-12);
+    let log10 = reduction["log10_extent_after_noise"].as_f64().unwrap();
+    assert!((log10 - 5f64.log10()).abs() < 1e-12);
 }
 
 #[test]

@@ -25,6 +25,9 @@ impl Display for Summary {
             )?;
         }
         line(out, "sites", &self.sites_line())?;
+        if let Some(reduced) = self.reduced_line() {
+            line(out, "reduced", &reduced)?;
+        }
         line(out, "extent ξ", &self.extent_line())?;
         line(out, "precision", &self.precision())?;
         line(out, "shots", &self.shots_line())?;
@@ -81,25 +84,9 @@ impl Summary {
 
     fn sites_line(&self) -> String {
         if let Some(reduction) = &self.sites.reduction {
-            let Reduction {
-                as_written,
-                merged,
-                deterministic,
-                unobservable,
-                ..
-            } = reduction;
-            let gates = if *as_written == 1 { "gate" } else { "gates" };
-            let mut text = format!("{} of {as_written} non-Clifford {gates}", self.sites.kept);
-            for (count, what) in [
-                (merged, "merged"),
-                (deterministic, "deterministic"),
-                (unobservable, "unobservable"),
-            ] {
-                if *count > 0 {
-                    text += &format!(", {count} {what}");
-                }
-            }
-            return text;
+            let gates = reduction.as_written;
+            let noun = if gates == 1 { "gate" } else { "gates" };
+            return format!("{} left of {gates} non-Clifford {noun}", self.sites.kept);
         }
         let count = self.sites.count;
         let places = if count == 1 { "place" } else { "places" };
@@ -107,6 +94,27 @@ impl Summary {
             0 => format!("{count} non-Clifford {places}"),
             idle => format!("{count} non-Clifford {places}, {idle} of them without effect"),
         }
+    }
+
+    /// How sites went, if any did.
+    fn reduced_line(&self) -> Option<String> {
+        let Reduction {
+            merged,
+            deterministic,
+            unobservable,
+            ..
+        } = self.sites.reduction.as_ref()?;
+        let ways = [
+            (merged, "merged"),
+            (deterministic, "on a known axis"),
+            (unobservable, "unobservable"),
+        ];
+        let ways: Vec<String> = ways
+            .iter()
+            .filter(|(count, _)| **count > 0)
+            .map(|(count, way)| format!("{count} {way}"))
+            .collect();
+        (!ways.is_empty()).then(|| ways.join(", "))
     }
 
     fn extent_line(&self) -> String {
