@@ -1,7 +1,7 @@
 """All circuits of the mixing law: name, function, numbers of terms, read-outs."""
 
+from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Callable
 
 import law_cases as cases
 import law_cases_adaptive as adaptive
