@@ -75,8 +75,9 @@ def noisy_face_states(c):
     m = c.bits("m", 2)
     for qubit in q:
         c.prepare(qubit, ("ry", (FACE_ANGLE,), []), ("rz", (QUARTER,), [depolarizing(0.1)]))
-    c.gate("h", q[0])
-    c.gate("cx", *q)
+    # Nothing of either qubit alone is read: no rotation of it goes unseen.
+    c.gate("cz", *q)
+    spread(c, q)
     c.measure_all(q, m)
 
 
@@ -88,10 +89,10 @@ def generic_states(c):
     c.prepare(q[1], ("ry", (1.5,), []), ("rz", (0.7,), [dephasing(0.03)]))
     c.prepare(q[2], ("ry", (2.2,), [amplitude_damping(0.1)]),
               ("rz", (-0.9,), [over_rotation("x", 0.2)]))
-    c.gate("cx", q[0], q[1])
-    c.gate("h", q[0])
-    c.gate("cx", q[1], q[2])
-    c.gate("h", q[2])
+    # Nothing of any qubit alone is read: no rotation of it goes unseen.
+    c.gate("cz", q[0], q[1])
+    c.gate("cz", q[1], q[2])
+    spread(c, q)
     c.measure_all(q, m)
 
 
