@@ -7,7 +7,7 @@ use std::path::Path;
 
 use crate::circuit::{self, Circuit, ParseOptions};
 use crate::magic::mixing::log_extent;
-use crate::magic::{self, ScheduleOptions, Written};
+use crate::magic::{self, Schedule, ScheduleOptions, Written};
 use crate::noise::{self, NoiseFile};
 use crate::program::{self, Program, Reduced, SiteCounts};
 
@@ -41,6 +41,15 @@ pub(super) struct Reduction {
     pub counts: SiteCounts,
 }
 
+/// The same before it is compiled.
+pub(super) struct Scheduled {
+    pub texts: Texts,
+    pub circuit: Circuit,
+    pub title: Option<String>,
+    pub schedule: Schedule,
+    pub reduction: Reduction,
+}
+
 /// How the input is read.
 pub(super) struct Reading<'a> {
     pub circuit: &'a Path,
@@ -52,6 +61,25 @@ pub(super) struct Reading<'a> {
 
 /// Reads, checks and compiles the input; shows warnings and errors.
 pub(super) fn load(reading: &Reading<'_>) -> Result<Input, CommandError> {
+    let Scheduled {
+        texts,
+        circuit,
+        title,
+        schedule,
+        reduction,
+    } = schedule(reading)?;
+    let program = Program::compile(schedule, circuit.qubits.len(), circuit.bits)?;
+    Ok(Input {
+        texts,
+        circuit,
+        title,
+        program,
+        reduction,
+    })
+}
+
+/// Reads and checks the input and finds its sites; shows warnings and errors.
+pub(super) fn schedule(reading: &Reading<'_>) -> Result<Scheduled, CommandError> {
     let texts = Texts {
         circuit_name: reading.circuit.display().to_string(),
         circuit: read("circuit", reading.circuit)?,
@@ -99,18 +127,17 @@ pub(super) fn load(reading: &Reading<'_>) -> Result<Input, CommandError> {
     drop(noisy);
     let log_extent_after_noise = log_extent(&schedule.sites);
     let Reduced { schedule, counts } = program::reduce(schedule, qubits, &recorded(&circuit));
-    let program = Program::compile(schedule, qubits, circuit.bits)?;
     let reduction = Reduction {
         written: magic::as_written(&circuit),
         log_extent_after_noise,
         counts,
     };
     let title = noise_file.and_then(|file| file.title);
-    Ok(Input {
+    Ok(Scheduled {
         texts,
         circuit,
         title,
-        program,
+        schedule,
         reduction,
     })
 }

@@ -7,17 +7,24 @@
 //! wrong and nothing was written; 130 interrupted.
 
 mod input;
+mod machine;
 mod message;
 mod options;
+mod picture;
+mod places;
+mod plan;
 mod progress;
+mod rehearse;
 mod run;
 mod show;
+mod verify;
 
 use std::process::ExitCode;
 
 use clap::Parser;
 
 use crate::circuit::Diagnostic;
+use crate::exact::ExactError;
 use crate::program::CompileError;
 use crate::readout::choice::ChoiceError;
 use crate::sampler::SampleError;
@@ -37,6 +44,12 @@ enum CommandError {
     /// The circuit cannot be compiled.
     #[error(transparent)]
     Compile(#[from] CompileError),
+    /// There is no exact distribution to compare with.
+    #[error(transparent)]
+    Exact(#[from] ExactError),
+    /// Drawn shots do not follow their law.
+    #[error("{0}")]
+    Rejected(String),
     /// No read-out can run the circuit as asked.
     #[error(transparent)]
     Choice(#[from] ChoiceError),
@@ -61,6 +74,14 @@ enum CommandError {
     /// The summary could not be printed.
     #[error("cannot print the summary: {0}")]
     Print(std::io::Error),
+    /// A picture could not be written.
+    #[error("cannot write the figure {}: {error}", .path.display())]
+    Picture {
+        /// Where to.
+        path: std::path::PathBuf,
+        /// Why.
+        error: std::io::Error,
+    },
     /// Ctrl-C.
     #[error("{0}")]
     Interrupted(String),
@@ -73,10 +94,13 @@ impl CommandError {
             | CommandError::Usage(_)
             | CommandError::Compile(_)
             | CommandError::Choice(_)
+            | CommandError::Exact(_)
             | CommandError::Output(_) => 2,
             CommandError::Sample(_)
             | CommandError::Store(_)
             | CommandError::Stopped { .. }
+            | CommandError::Rejected(_)
+            | CommandError::Picture { .. }
             | CommandError::Print(_) => 1,
             CommandError::Interrupted(_) => 130,
         }
@@ -96,6 +120,8 @@ pub fn main() -> ExitCode {
     };
     let result = match &options.command {
         Command::Run(run) => run::run(run),
+        Command::Verify(verify) => verify::verify(verify),
+        Command::Plan(plan) => plan::plan(plan),
         Command::Show(show) => show::show(show),
     };
     match result {
@@ -113,4 +139,14 @@ fn refuse(texts: &input::Texts, diagnostics: &[Diagnostic]) -> CommandError {
         message::diagnostic(texts, diagnostic);
     }
     CommandError::Input(diagnostics.len())
+}
+
+/// Prints a text on stdout. A closed pipe is no error.
+fn print(text: &str) -> Result<(), CommandError> {
+    use std::io::{ErrorKind, Write};
+    let mut stdout = std::io::stdout();
+    match writeln!(stdout, "{}", text.trim_end()).and_then(|()| stdout.flush()) {
+        Err(error) if error.kind() != ErrorKind::BrokenPipe => Err(CommandError::Print(error)),
+        _ => Ok(()),
+    }
 }

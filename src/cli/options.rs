@@ -4,6 +4,12 @@ use std::path::PathBuf;
 
 use clap::{Args, Parser, Subcommand, ValueEnum};
 
+use crate::plan::units::{parse_bytes, parse_duration};
+use crate::readout::choice::Readout;
+
+/// δ where nothing is said about it.
+pub(super) const DEFAULT_DELTA: f64 = 0.1;
+
 /// Draws measurement shots from noisy, T-heavy quantum circuits.
 #[derive(Debug, Parser)]
 #[command(
@@ -25,6 +31,10 @@ pub(super) struct Options {
 pub(super) enum Command {
     /// Draw shots of a circuit into an HDF5 file
     Run(Run),
+    /// Tell what a circuit costs before it is run
+    Plan(Plan),
+    /// Check drawn shots of a small circuit against its exact distribution
+    Verify(Verify),
     /// Print what a result file holds
     Show(Show),
 }
@@ -49,8 +59,20 @@ pub(super) struct Run {
     pub shots: u64,
 
     /// Trace-norm error δ of the averaged output state, above 0 and below 2
-    #[arg(long, value_name = "D", default_value_t = 0.1, value_parser = delta)]
-    pub delta: f64,
+    /// [default: 0.1]
+    #[arg(long, value_name = "D", value_parser = delta)]
+    pub delta: Option<f64>,
+
+    /// Take the smallest δ with which the run ends within this time, for
+    /// example 10min
+    #[arg(long, value_name = "TIME", value_parser = parse_duration,
+          conflicts_with_all = ["delta", "terms", "part"])]
+    pub budget: Option<f64>,
+
+    /// Use at most so much memory, for example 8GiB; without --delta and
+    /// --terms take the smallest δ that fits
+    #[arg(long, value_name = "SIZE", value_parser = parse_bytes)]
+    pub memory: Option<u64>,
 
     /// Result file to write
     #[arg(long, value_name = "FILE.h5")]
@@ -64,8 +86,9 @@ pub(super) struct Run {
     #[arg(long, value_enum, default_value_t = ReadoutOption::Auto)]
     pub readout: ReadoutOption,
 
-    /// Number of stabiliser terms, or "average" for the number that makes
-    /// companion-corrected averages cheapest [default: from δ]
+    /// Number of stabiliser terms k, instead of --delta. "average" takes k about
+    /// ξ + 3, which makes averages corrected with companion shots cheapest; raw
+    /// shots are then far from exact [default: from δ]
     #[arg(long, value_name = "K", value_parser = terms)]
     pub terms: Option<TermsOption>,
 
@@ -110,6 +133,151 @@ pub(super) struct Run {
     pub quiet: bool,
 }
 
+/// Check drawn shots of a small circuit against its exact distribution.
+///
+/// The exact distributions of the circuit and of its companion are computed with
+/// density matrices, straight from the circuit; shots are drawn as `run` would
+/// draw them, and tested against [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ).
+#[derive(Debug, Args)]
+#[command(
+    after_help = "Exit status: 0 the shots follow their law, 1 they do not (p below \
+    1e-6), 2 wrong input or a circuit that is too large.\n\nExamples:\n  \
+    shottower verify circuit.qasm --noise bench.toml --shots 100000 --readout walk\n  \
+    shottower verify circuit.qasm --shots 50000 --terms 4 --readout walk --seed 7 --json"
+)]
+pub(super) struct Verify {
+    /// Circuit file, OpenQASM 3 or 2
+    #[arg(value_name = "CIRCUIT")]
+    pub circuit: PathBuf,
+
+    /// Noise file, TOML
+    #[arg(long, value_name = "FILE")]
+    pub noise: Option<PathBuf>,
+
+    /// Number of shots
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..))]
+    pub shots: u64,
+
+    /// Trace-norm error δ of the averaged output state, above 0 and below 2
+    #[arg(long, value_name = "D", default_value_t = 0.1, value_parser = delta)]
+    pub delta: f64,
+
+    /// Seed; the same seed gives the same shots as `run` [default: random]
+    #[arg(long, value_name = "S")]
+    pub seed: Option<u64>,
+
+    /// How outcomes are read out
+    #[arg(long, value_enum, default_value_t = ReadoutOption::Auto)]
+    pub readout: ReadoutOption,
+
+    /// Number of stabiliser terms, or "average"; few terms (2 to 8) make the
+    /// companion's share large and the test sharp [default: from δ]
+    #[arg(long, value_name = "K", value_parser = terms)]
+    pub terms: Option<TermsOption>,
+
+    /// Number of companion shots [default: as many as shots; 0 for dense]
+    #[arg(long, value_name = "M")]
+    pub companion: Option<u64>,
+
+    /// Number of threads [default: all cores]
+    #[arg(long, value_name = "T", value_parser = clap::value_parser!(u16).range(1..=256))]
+    pub threads: Option<u16>,
+
+    /// Give an `input` of the circuit its value
+    #[arg(long, value_name = "NAME=VALUE", value_parser = assignment)]
+    pub set: Vec<(String, f64)>,
+
+    /// Merge noise into the non-Clifford places it stands next to
+    #[arg(long, value_enum, default_value_t = Switch::On)]
+    pub absorb: Switch,
+
+    /// Most operations after unrolling
+    #[arg(long, value_name = "N", default_value_t = 1_000_000)]
+    pub max_ops: usize,
+
+    /// Print the report as JSON
+    #[arg(long)]
+    pub json: bool,
+
+    /// No progress and no report, only the exit status
+    #[arg(long, short)]
+    pub quiet: bool,
+}
+
+/// Tell what a circuit costs before it is run.
+#[derive(Debug, Args)]
+#[command(after_help = "Examples:\n  \
+    shottower plan circuit.qasm --noise bench.toml --shots 100000\n  \
+    shottower plan circuit.qasm --shots 100000 --budget 10min --memory 8GiB\n  \
+    shottower plan circuit.qasm --delta 0.3 --delta 0.1 --figure plan.svg")]
+pub(super) struct Plan {
+    /// Circuit file, OpenQASM 3 or 2
+    #[arg(value_name = "CIRCUIT")]
+    pub circuit: PathBuf,
+
+    /// Noise file, TOML
+    #[arg(long, value_name = "FILE")]
+    pub noise: Option<PathBuf>,
+
+    /// Number of shots
+    #[arg(long, value_name = "N", default_value_t = 1000)]
+    pub shots: u64,
+
+    /// δ of the rows; may be repeated [default: 0.5 0.2 0.1 0.05 0.02 0.01]
+    #[arg(long, value_name = "D", value_parser = delta, num_args = 1..)]
+    pub delta: Vec<f64>,
+
+    /// Find the smallest δ with which a run ends within this time, for example
+    /// 10min
+    #[arg(long, value_name = "TIME", value_parser = parse_duration)]
+    pub budget: Option<f64>,
+
+    /// Find the smallest δ with which a run needs at most so much memory, for
+    /// example 8GiB
+    #[arg(long, value_name = "SIZE", value_parser = parse_bytes)]
+    pub memory: Option<u64>,
+
+    /// Draw δ against time into a picture
+    #[arg(long, value_name = "FILE.svg")]
+    pub figure: Option<PathBuf>,
+
+    /// Overwrite an existing picture
+    #[arg(long)]
+    pub force: bool,
+
+    /// Seed of the shots that are timed
+    #[arg(long, value_name = "S", default_value_t = 1)]
+    pub seed: u64,
+
+    /// How outcomes are read out
+    #[arg(long, value_enum, default_value_t = ReadoutOption::Auto)]
+    pub readout: ReadoutOption,
+
+    /// Number of companion shots [default: as many as shots; 0 for dense]
+    #[arg(long, value_name = "M")]
+    pub companion: Option<u64>,
+
+    /// Number of threads [default: all cores]
+    #[arg(long, value_name = "T", value_parser = clap::value_parser!(u16).range(1..=256))]
+    pub threads: Option<u16>,
+
+    /// Give an `input` of the circuit its value
+    #[arg(long, value_name = "NAME=VALUE", value_parser = assignment)]
+    pub set: Vec<(String, f64)>,
+
+    /// Merge noise into the non-Clifford places it stands next to
+    #[arg(long, value_enum, default_value_t = Switch::On)]
+    pub absorb: Switch,
+
+    /// Most operations after unrolling
+    #[arg(long, value_name = "N", default_value_t = 1_000_000)]
+    pub max_ops: usize,
+
+    /// Print the plan as JSON
+    #[arg(long)]
+    pub json: bool,
+}
+
 /// Print what a result file holds.
 #[derive(Debug, Args)]
 #[command(after_help = "Examples:\n  shottower show shots.h5\n  \
@@ -122,6 +290,14 @@ pub(super) struct Show {
     /// Print JSON
     #[arg(long)]
     pub json: bool,
+
+    /// Draw the frequencies of the likeliest outcomes into a picture
+    #[arg(long, value_name = "FILE.svg")]
+    pub figure: Option<PathBuf>,
+
+    /// Overwrite an existing picture
+    #[arg(long)]
+    pub force: bool,
 }
 
 /// How outcomes are read out.
@@ -135,6 +311,18 @@ pub(super) enum ReadoutOption {
     Probe,
     /// Exact amplitudes of the active qubits (at most 28 of them)
     Dense,
+}
+
+impl ReadoutOption {
+    /// The read-out asked for, if one is.
+    pub(super) fn wanted(self) -> Option<Readout> {
+        match self {
+            ReadoutOption::Auto => None,
+            ReadoutOption::Probe => Some(Readout::Probe),
+            ReadoutOption::Walk => Some(Readout::Walk),
+            ReadoutOption::Dense => Some(Readout::Dense),
+        }
+    }
 }
 
 #[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]

@@ -1,28 +1,29 @@
 //! `show`: print what a result file holds.
 
 use crate::report::Summary;
+use crate::report::figure::shots_figure;
 use crate::store::ShotFile;
 
 use super::CommandError;
 use super::options::Show;
+use super::picture;
 
 /// Prints the summary of a result file.
 pub(super) fn show(options: &Show) -> Result<(), CommandError> {
+    let figure = picture::figure_file(options.figure.as_deref(), options.force)?;
     let file = ShotFile::open(&options.file).map_err(CommandError::Output)?;
-    print(&Summary::from_file(&file)?, options.json)
+    let summary = Summary::from_file(&file)?;
+    print(&summary, options.json)?;
+    match figure {
+        Some(figure) => figure.write(&shots_figure(&summary)),
+        None => Ok(()),
+    }
 }
 
-/// Prints a summary on stdout. A closed pipe is no error.
+/// Prints a summary on stdout.
 pub(super) fn print(summary: &Summary, json: bool) -> Result<(), CommandError> {
-    use std::io::{ErrorKind, Write};
-    let text = if json {
-        summary.to_json()
-    } else {
-        summary.to_string()
-    };
-    let mut stdout = std::io::stdout();
-    match writeln!(stdout, "{}", text.trim_end()).and_then(|()| stdout.flush()) {
-        Err(error) if error.kind() != ErrorKind::BrokenPipe => Err(CommandError::Print(error)),
-        _ => Ok(()),
-    }
+    super::print(&match json {
+        true => summary.to_json(),
+        false => summary.to_string(),
+    })
 }

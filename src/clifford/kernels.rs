@@ -1,12 +1,4 @@
-//! One source, several instruction sets.
-//!
-//! A kernel is a plain Rust function whose inner loops run over whole words
-//! without deciding anything by a bit. [`kernel!`] compiles it several times:
-//! once for the instructions every processor of the target has (the plain
-//! twin, always there) and once for each [`Level`] with wider vectors; the level
-//! is chosen at run time. Nothing but the instructions differs: integers are
-//! exact, and floating-point operations are done in the order they are written
-//! (none is fused or reordered), so that all levels agree bit for bit.
+#![doc = include_str!("kernels.md")]
 
 use std::sync::OnceLock;
 

@@ -254,6 +254,58 @@ impl Program {
             .zip(self.kept.iter().map(Option::is_some))
     }
 
+    /// The schedule it was compiled from.
+    pub fn schedule(&self) -> &Schedule {
+        &self.schedule
+    }
+
+    /// Index of the first instruction of the schedule that changes the
+    /// structure under a condition, if there is one.
+    pub fn first_branch(&self) -> Option<usize> {
+        match &self.first.end {
+            End::Finished => None,
+            End::Branch(branch) => Some(branch.instruction),
+        }
+    }
+
+    /// Instructions of the schedule that damp the register in the first
+    /// segment, in order of their index.
+    pub fn damped_instructions(&self) -> Vec<usize> {
+        let damped: Vec<u32> = self
+            .first
+            .steps
+            .iter()
+            .filter_map(|step| match step {
+                Step::Damp { location, .. } => Some(*location),
+                _ => None,
+            })
+            .collect();
+        let mut instructions: Vec<usize> = self
+            .location_of
+            .iter()
+            .filter(|(_, location)| damped.contains(location))
+            .map(|(&instruction, _)| instruction)
+            .collect();
+        instructions.sort_unstable();
+        instructions
+    }
+
+    /// Sites met in the first segment before anything of the register is
+    /// measured or damped, in order; indices into [`Program::sites`].
+    pub fn early_sites(&self) -> Vec<u32> {
+        let reads = |step: &&Step| matches!(step, Step::Measure { .. } | Step::Damp { .. });
+        let steps = self.first.steps.iter().take_while(|step| !reads(step));
+        steps
+            .filter_map(|step| match step {
+                Step::Prepare { site, .. }
+                | Step::Rotate { site, .. }
+                | Step::Ccz { site, .. }
+                | Step::Skip { site } => Some(*site),
+                _ => None,
+            })
+            .collect()
+    }
+
     /// Places where a fault may happen, in circuit order.
     pub fn locations(&self) -> &[Location] {
         &self.locations

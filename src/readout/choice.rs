@@ -322,6 +322,15 @@ fn term_memory(program: &Program) -> u128 {
     (state + size_of::<Complex64>() + program.sites().len()) as u128
 }
 
+/// Rough seconds a shot takes on one thread, from the number of steps alone: for
+/// choices that are plain. Measured costs are the planning's business.
+pub fn rough_seconds(program: &Program, choice: &Choice) -> f64 {
+    1e-9 * match choice.readout {
+        Readout::Dense => dense_cost(program),
+        Readout::Walk | Readout::Probe => walk_cost(program, choice),
+    }
+}
+
 /// Rough nanoseconds a shot.
 fn dense_cost(program: &Program) -> f64 {
     let steps = register_steps(program) as f64;

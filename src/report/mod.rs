@@ -47,11 +47,17 @@
 //! This module knows result files, and nothing of how shots are drawn.
 
 pub mod estimate;
+pub mod figure;
 mod number;
+pub mod plan_text;
 mod summary;
 mod tally;
 mod text;
+mod verification;
 
 pub use estimate::{Estimate, Sample};
 pub use number::format_extent;
 pub use summary::{Draws, Outcome, Quantity, Reduction, RegisterSummary, Sites, Summary};
+pub use verification::{
+    Corrected, Distances, Drawn, LIMIT, LawTest, Setting, Verification, allowed_bias,
+};

@@ -3,11 +3,13 @@
 //! [`machine::Machine`] runs the steps of a program on a register: the only
 //! loop over steps there is. [`batch`] runs many shots on all threads and hands
 //! finished ones on in order. The bits of a shot depend on the seed, its family
-//! and its index alone, never on threads, batches or parts.
+//! and its index alone, never on threads, batches or parts. [`drive`] builds the
+//! register that was chosen.
 //!
 //! This module knows programs and registers, and nothing of files or terminals.
 
 pub mod batch;
+pub mod drive;
 pub mod machine;
 pub mod random;
 #[cfg(test)]
@@ -15,6 +17,7 @@ mod tests;
 
 pub use crate::readout::Interrupt;
 pub use batch::{Block, Drawing, Rows, Sampler};
+pub use drive::Drive;
 pub use machine::{FaultEvent, ShotAudit, pauli_code};
 pub use random::Family;
 
@@ -52,6 +55,9 @@ pub enum SampleError {
 pub trait Progress {
     /// So many more shots are done, after so many draws in all.
     fn advance(&mut self, shots: u64, attempts: u64);
+
+    /// The shots told of next had at most so many active qubits at once.
+    fn active(&mut self, _peak: u16) {}
 }
 
 /// Tells nobody.

@@ -7,6 +7,7 @@
 //! unnormalised density matrix for every value of the classical bits and acts
 //! on it with plain matrices.
 
+mod exact;
 mod random_circuits;
 mod reference;
 
@@ -17,6 +18,8 @@ use rand_pcg::Pcg64;
 use smallvec::smallvec;
 
 use crate::circuit::{Clifford, Pauli, Qubits};
+use crate::exact::Law;
+use crate::exact::fit::{Counts, fit};
 use crate::magic::mixing::{log_extent, mixing_weight};
 use crate::magic::{ScheduleOptions, Sparsifier, schedule};
 use crate::noise::{
@@ -96,40 +99,25 @@ fn sample_counting<R: Register + Send>(
     counts
 }
 
-/// Pearson's χ² of counts against a law, bins of fewer than 10 expected counts
-/// pooled, as standard deviations of the normal law by the Wilson–Hilferty
-/// approximation (Proc. Natl. Acad. Sci. USA 17, 684 (1931), from memory).
+/// Pearson's χ² of counts against a law as standard deviations of the normal law
+/// by the Wilson–Hilferty approximation (Proc. Natl. Acad. Sci. USA 17, 684
+/// (1931), from memory).
 fn deviation(counts: &BTreeMap<u32, f64>, law: &BTreeMap<u32, f64>) -> f64 {
-    let shots: f64 = counts.values().sum();
+    let mut drawn = Counts::default();
     for (bits, count) in counts {
-        let chance = law.get(bits).copied().unwrap_or(0.0);
-        assert!(
-            chance > 1e-12 || *count == 0.0,
-            "outcome {bits:b} of probability 0 was drawn"
-        );
+        drawn.add_many(&[u64::from(*bits)], *count as u64);
     }
-    let (mut statistic, mut bins) = (0.0, 0.0);
-    let (mut rest_count, mut rest_expected) = (0.0, 0.0);
-    for (bits, chance) in law {
-        let (count, expected) = (counts.get(bits).copied().unwrap_or(0.0), chance * shots);
-        if expected < 10.0 {
-            rest_count += count;
-            rest_expected += expected;
-        } else {
-            statistic += (count - expected).powi(2) / expected;
-            bins += 1.0;
-        }
-    }
-    if rest_expected > 10.0 {
-        statistic += (rest_count - rest_expected).powi(2) / rest_expected;
-        bins += 1.0;
-    }
-    let freedom: f64 = bins - 1.0;
-    if freedom < 1.0 {
+    let law = law
+        .iter()
+        .map(|(bits, chance)| (vec![u64::from(*bits)], *chance));
+    let found = fit(&drawn, &Law::new(law));
+    assert_eq!(found.impossible, 0, "outcomes of probability 0 were drawn");
+    if found.degrees_of_freedom == 0 {
         return 0.0;
     }
+    let freedom = found.degrees_of_freedom as f64;
     let spread = 2.0 / (9.0 * freedom);
-    ((statistic / freedom).cbrt() - (1.0 - spread)) / spread.sqrt()
+    ((found.statistic / freedom).cbrt() - (1.0 - spread)) / spread.sqrt()
 }
 
 fn compile(circuit: &NoisyCircuit, qubits: usize, absorb: bool) -> Program {
@@ -188,14 +176,26 @@ fn dense_shots_follow_the_density_matrix() {
     }
 }
 
-/// P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), P_comp from half a million
-/// companion shots.
+/// P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), P_comp exact, or from half a
+/// million companion shots where it differs from path to path.
 fn mixing_law(
     program: &Program,
     ideal: &BTreeMap<u32, f64>,
     terms: u64,
     seed: u64,
 ) -> BTreeMap<u32, f64> {
+    let recorded: Vec<u32> = (0..program.bits() as u32).collect();
+    if let Ok(exact) = crate::exact::companion(program, &recorded) {
+        let log_extent = log_extent(program.sites()) + exact.total().ln();
+        let weight = mixing_weight(log_extent, terms);
+        let exact = exact.normalised();
+        let mixed = |bits: u32| exact.weight(&[u64::from(bits)]);
+        return ideal
+            .iter()
+            .map(|(&bits, &chance)| (bits, (1.0 - weight) * chance + weight * mixed(bits)))
+            .filter(|entry| entry.1 > 1e-9)
+            .collect();
+    }
     let shots = 500_000;
     let settings = walk::Settings::new(program.sites(), 1, program.log_damping_trace());
     let mut audit = Audit::default();

@@ -126,6 +126,17 @@ impl<const W: usize> Terms<W> {
         self.slots
     }
 
+    /// The instructions its passes use.
+    pub fn level(&self) -> Level {
+        self.level
+    }
+
+    /// Changes them.
+    #[cfg(test)]
+    pub(crate) fn set_level(&mut self, level: Level) {
+        self.level = level;
+    }
+
     /// How many terms are left.
     pub fn len(&self) -> usize {
         self.heads.len()

@@ -148,9 +148,13 @@ fn change<const W: usize>(term: &mut Term<'_, W>, work: &Work<'_, W>) -> bool {
             return false;
         }
     }
-    work.operations
-        .iter()
-        .all(|operation| operate(term, operation, &work.planes))
+    // No closure: it would be compiled apart, for every processor.
+    for operation in work.operations {
+        if !operate(term, operation, &work.planes) {
+            return false;
+        }
+    }
+    true
 }
 
 #[inline(always)]

@@ -10,7 +10,7 @@ use super::quadratic::{PAIRS, QuadraticPhase};
 use crate::magic::Stabiliser;
 
 /// Everything of a term but its rows.
-#[derive(Debug, Clone, Copy)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub(crate) struct Head<const W: usize> {
     /// V, the slots whose basis bits are the parameters.
     pub(crate) pivots: Bits<W>,

@@ -1,0 +1,291 @@
+//! Measures a run before it is made: shots of the circuit itself, and a result
+//! file in a temporary directory.
+
+use std::ffi::OsString;
+use std::path::Path;
+use std::time::Instant;
+
+use clap::Parser;
+
+use crate::magic::Sparsifier;
+use crate::magic::mixing::terms_for_delta;
+use crate::plan::{
+    self, Accuracy, CHOICE_RANGE, Limits, Model, Overhead, Profile, Request, Solved, Survey,
+    counted_bytes,
+};
+use crate::readout::choice::{self, Readout, TermCount, Wish};
+use crate::report::Summary;
+use crate::sampler::{Block, Drive, SampleError};
+use crate::store::{Finished, ShotFile};
+
+use super::CommandError;
+use super::input::Input;
+use super::machine::{INTERRUPT, available_memory};
+use super::message;
+use super::options::{Command, Options, Run};
+use super::run::{self, Decided, Job};
+
+/// A drive with the bits that a run records.
+pub(super) fn drive<'p>(input: &'p Input, sparsifier: &'p Sparsifier, seed: u64) -> Drive<'p> {
+    Drive {
+        program: &input.program,
+        sparsifier,
+        recorded: run::recorded_bits(input),
+        seed,
+        keep_events: false,
+        accept_all: false,
+    }
+}
+
+/// An error if Ctrl-C came while nothing had been written.
+pub(super) fn stopped() -> Result<(), CommandError> {
+    if INTERRUPT.raised() {
+        return Err(CommandError::Interrupted(
+            "interrupted while measuring; nothing was written".to_owned(),
+        ));
+    }
+    Ok(())
+}
+
+/// What is to be known about a circuit.
+pub(super) struct Question<'a> {
+    pub request: Request,
+    /// δ that costs are wanted for, from the smallest to the largest.
+    pub deltas: (f64, f64),
+    /// Whether all read-outs are of interest, or only those a run would take.
+    pub all: bool,
+    pub seed: u64,
+    pub log_extent: f64,
+    /// When the command began.
+    pub started: Instant,
+    /// The circuit file, for the rehearsal of a result file.
+    pub circuit: &'a Path,
+}
+
+/// Measures what shots of the input cost; about two seconds.
+pub(super) fn model<'p>(
+    input: &'p Input,
+    sparsifier: &'p Sparsifier,
+    question: &Question<'_>,
+) -> Result<Model<'p>, CommandError> {
+    let Question {
+        request,
+        log_extent,
+        ..
+    } = *question;
+    let program = &input.program;
+    let start = question.started.elapsed().as_secs_f64();
+    let wants = |readout| question.all || request.readout.is_none_or(|wanted| wanted == readout);
+    let terms = !program.has_damping();
+    let mut survey = Survey::new(
+        drive(input, sparsifier, question.seed),
+        log_extent,
+        request.threads,
+        available_memory().min(request.memory) as f64,
+        &INTERRUPT,
+    );
+    let unlimited = Wish {
+        readout: Some(Readout::Dense),
+        delta: 0.1,
+        terms: TermCount::FromDelta,
+        threads: request.threads,
+        memory: available_memory().min(request.memory),
+    };
+    let exact = choice::choose(program, log_extent, &unlimited).ok();
+    let companion = match terms {
+        true => survey.companion(0.1)?,
+        false => None,
+    };
+    stopped()?;
+    let blocks = match (terms, &exact) {
+        (true, _) => survey.companion_blocks(STORED as u64)?,
+        (false, Some(exact)) => survey.blocks(exact, STORED as u64)?,
+        (false, None) => Vec::new(),
+    };
+    stopped()?;
+    let mut overhead = file_costs(input, question, terms, &blocks)?;
+    overhead.start = start;
+    overhead.memory = plan::peak_memory().unwrap_or(0.0);
+    stopped()?;
+    let mut model = Model {
+        program: Some(program),
+        log_extent,
+        request,
+        profile: Some(Profile::new(program)),
+        walk: None,
+        probe: None,
+        dense: None,
+        companion: companion.map(|timing| timing.seconds),
+        overhead,
+        bare: None,
+        blocked: None,
+    };
+    if terms && wants(Readout::Walk) {
+        let (least, most) = term_range(&model, question.deltas);
+        model.walk = survey.walk(least, most, counted_bytes(program), 1.2)?;
+        stopped()?;
+    }
+    if terms && (question.all || request.readout == Some(Readout::Probe)) {
+        let (_, most) = term_range(&model, question.deltas);
+        model.probe = survey.probe(most, 0.3)?;
+        stopped()?;
+    }
+    if wants(Readout::Dense)
+        && let Some(profile) = &model.profile
+    {
+        // A branch that does not fit is a reason of its own, not a failure.
+        model.dense = match survey.dense(exact.as_ref(), profile, 0.2) {
+            Ok(dense) => dense,
+            Err(SampleError::TooManyActive { .. }) => None,
+            Err(error) => return Err(error.into()),
+        };
+        stopped()?;
+    }
+    Ok(model)
+}
+
+/// Numbers of terms from the largest δ to the smallest, the averages' included,
+/// as far as they can be counted.
+fn term_range(model: &Model<'_>, deltas: (f64, f64)) -> (u64, u64) {
+    const MOST: u64 = u32::MAX as u64;
+    let at = |delta: f64| terms_for_delta(model.log_extent, delta).map_or(MOST, |k| k.min(MOST));
+    let (average, _) = model.terms(Accuracy::Average, Readout::Walk);
+    let average = (average.min(MOST as f64) as u64).max(1);
+    (at(deltas.1).min(average), at(deltas.0).max(average))
+}
+
+/// Most shots of a rehearsed result file.
+const STORED: usize = 1 << 15;
+
+/// Times writing, finishing and summing up result files of two sizes.
+fn file_costs(
+    input: &Input,
+    question: &Question<'_>,
+    companion: bool,
+    blocks: &[Block],
+) -> Result<Overhead, CommandError> {
+    let drawn: usize = blocks.iter().map(|block| block.rows.shots).sum();
+    if drawn == 0 {
+        return Ok(Overhead::default());
+    }
+    let folder = tempfile::tempdir().map_err(|error| {
+        CommandError::Usage(format!(
+            "cannot make a temporary directory to time a result file in: {error}"
+        ))
+    })?;
+    let words: Vec<OsString> = vec![
+        "shottower".into(),
+        "run".into(),
+        question.circuit.into(),
+        "--shots".into(),
+        STORED.to_string().into(),
+        "--companion".into(),
+        if companion { "1" } else { "0" }.into(),
+        "--out".into(),
+        folder.path().join("rehearsal.h5").into(),
+        "--force".into(),
+    ];
+    let Ok(Options {
+        command: Command::Run(options),
+    }) = Options::try_parse_from(words)
+    else {
+        return Ok(Overhead::default());
+    };
+    let time = |shots: usize, companion: usize| -> Result<f64, CommandError> {
+        let choice = choice::Choice {
+            readout: Readout::Walk,
+            terms: Some(2),
+            mixing_weight: 0.1,
+            probe: None,
+            memory: 0,
+            room: 0,
+        };
+        let decided = Decided {
+            choice,
+            delta: Some(0.1),
+        };
+        let job = Job::new(&options, input, &decided, question.log_extent, 1)?;
+        let started = Instant::now();
+        let mut writer = job.open(&options)?;
+        for block in some(blocks, companion) {
+            writer.append_companion(&block.rows)?;
+        }
+        for block in some(blocks, shots) {
+            run::append(&mut writer, block, false)?;
+        }
+        writer.finish(Finished { clipped: 0 })?;
+        let file = ShotFile::open(&options.out)?;
+        let summary = Summary::from_file(&file)?;
+        std::hint::black_box(summary.to_string().len());
+        Ok(started.elapsed().as_secs_f64())
+    };
+    let few = STORED / 16;
+    time(few, 0)?;
+    let short = time(few, 0)?;
+    let long = time(STORED, 0)?;
+    let shot = (long - short).max(0.0) / written(blocks, STORED, few);
+    let companion = match companion {
+        true => (time(few, STORED)? - short).max(0.0) / written(blocks, STORED, 0),
+        false => 0.0,
+    };
+    Ok(Overhead {
+        end: (short - written(blocks, few, 0) * shot).max(0.0),
+        shot,
+        companion,
+        ..Overhead::default()
+    })
+}
+
+/// Blocks over and over, up to about so many shots.
+fn some(blocks: &[Block], shots: usize) -> impl Iterator<Item = &Block> {
+    let mut left = shots;
+    blocks.iter().cycle().take_while(move |block| {
+        let more = left > 0;
+        left = left.saturating_sub(block.rows.shots.max(1));
+        more
+    })
+}
+
+/// How many more shots `some` gives for one number than for another.
+fn written(blocks: &[Block], many: usize, few: usize) -> f64 {
+    let count = |shots| -> usize { some(blocks, shots).map(|block| block.rows.shots).sum() };
+    (count(many) - count(few)).max(1) as f64
+}
+
+/// The smallest δ within the limits of a run; says what it chose.
+pub(super) fn within_limits(
+    options: &Run,
+    input: &Input,
+    log_extent: f64,
+    threads: usize,
+) -> Result<Solved, CommandError> {
+    let memory = available_memory().min(options.memory.unwrap_or(u64::MAX));
+    let sparsifier = Sparsifier::new(input.program.sites());
+    let question = Question {
+        request: Request {
+            readout: options.readout.wanted(),
+            shots: options.shots,
+            companion: options.companion,
+            threads,
+            memory,
+        },
+        deltas: CHOICE_RANGE,
+        all: false,
+        seed: 1,
+        log_extent,
+        started: Instant::now(),
+        circuit: &options.circuit,
+    };
+    let model = model(input, &sparsifier, &question)?;
+    let limits = Limits {
+        seconds: options.budget,
+        memory,
+    };
+    let solved = model
+        .solve(&limits)
+        .map_err(|refusal| CommandError::Usage(super::plan::explain(&refusal, &model, input)))?;
+    if !options.quiet {
+        message::note(&super::plan::chosen_text(&solved));
+    }
+    Ok(solved)
+}
