@@ -78,8 +78,11 @@ def run(program, case, readout, shots, folder):
 
 def check(program, case, readout, seconds, repeats, folder):
     """Plans and runs one case; `seconds` is about what a run should take."""
-    row, _ = plan(program, case, readout, 1000)
-    shots = max(2, int(seconds / max(row["seconds"] / 1000, 1e-9)))
+    shots = 1000
+    for _ in range(3):
+        row, _ = plan(program, case, readout, shots)
+        factor = min(seconds / max(row["seconds"], 1e-9), 100)
+        shots = max(2, int(shots * factor))
     ratios, memories, planning = [], [], []
     for _ in range(repeats):
         before, took = plan(program, case, readout, shots)

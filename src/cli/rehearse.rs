@@ -15,7 +15,7 @@ use crate::plan::{
 };
 use crate::readout::choice::{self, Readout, TermCount, Wish};
 use crate::report::Summary;
-use crate::sampler::{Block, Drive, SampleError};
+use crate::sampler::{Block, Drive, SampleError, ShotAudit};
 use crate::store::{Finished, ShotFile};
 
 use super::CommandError;
@@ -92,20 +92,19 @@ pub(super) fn model<'p>(
         memory: available_memory().min(request.memory),
     };
     let exact = choice::choose(program, log_extent, &unlimited).ok();
-    let companion = match terms {
-        true => survey.companion(0.1)?,
-        false => None,
-    };
-    stopped()?;
     let blocks = match (terms, &exact) {
-        (true, _) => survey.companion_blocks(STORED as u64)?,
-        (false, Some(exact)) => survey.blocks(exact, STORED as u64)?,
+        (true, _) => survey.companion_blocks(FEW as u64)?,
+        (false, Some(exact)) => survey.blocks(exact, FEW as u64)?,
         (false, None) => Vec::new(),
     };
     stopped()?;
     let mut overhead = file_costs(input, question, terms, &blocks)?;
     overhead.start = start;
-    overhead.memory = plan::peak_memory().unwrap_or(0.0);
+    stopped()?;
+    let companion = match terms {
+        true => survey.companion(0.1)?,
+        false => None,
+    };
     stopped()?;
     let mut model = Model {
         program: Some(program),
@@ -127,7 +126,13 @@ pub(super) fn model<'p>(
     }
     if terms && (question.all || request.readout == Some(Readout::Probe)) {
         let (_, most) = term_range(&model, question.deltas);
-        model.probe = survey.probe(most, 0.3)?;
+        let wish = Wish {
+            readout: Some(Readout::Probe),
+            delta: question.deltas.1,
+            ..unlimited
+        };
+        let anchor = choice::choose(program, log_extent, &wish).ok();
+        model.probe = survey.probe(most, anchor.as_ref(), 0.3)?;
         stopped()?;
     }
     if wants(Readout::Dense)
@@ -156,6 +161,8 @@ fn term_range(model: &Model<'_>, deltas: (f64, f64)) -> (u64, u64) {
 
 /// Most shots of a rehearsed result file.
 const STORED: usize = 1 << 15;
+/// Fewest.
+const FEW: usize = 1 << 11;
 
 /// Times writing, finishing and summing up result files of two sizes.
 fn file_costs(
@@ -164,10 +171,15 @@ fn file_costs(
     companion: bool,
     blocks: &[Block],
 ) -> Result<Overhead, CommandError> {
-    let drawn: usize = blocks.iter().map(|block| block.rows.shots).sum();
-    if drawn == 0 {
-        return Ok(Overhead::default());
-    }
+    let memory = || plan::peak_memory().unwrap_or(0.0);
+    let Some(first) = blocks.iter().find(|block| block.rows.shots > 0) else {
+        return Ok(Overhead {
+            memory: memory(),
+            ..Overhead::default()
+        });
+    };
+    // Lists grow by doubling, so up to twice what a shot takes.
+    let waiting = 2 * (first.rows.words * size_of::<u64>() + size_of::<ShotAudit>());
     let folder = tempfile::tempdir().map_err(|error| {
         CommandError::Usage(format!(
             "cannot make a temporary directory to time a result file in: {error}"
@@ -219,19 +231,21 @@ fn file_costs(
         std::hint::black_box(summary.to_string().len());
         Ok(started.elapsed().as_secs_f64())
     };
-    let few = STORED / 16;
-    time(few, 0)?;
-    let short = time(few, 0)?;
+    time(FEW, 0)?;
+    let memory = memory();
+    let short = time(FEW, 0)?;
     let long = time(STORED, 0)?;
-    let shot = (long - short).max(0.0) / written(blocks, STORED, few);
+    let shot = (long - short).max(0.0) / written(blocks, STORED, FEW);
     let companion = match companion {
-        true => (time(few, STORED)? - short).max(0.0) / written(blocks, STORED, 0),
+        true => (time(FEW, STORED)? - short).max(0.0) / written(blocks, STORED, 0),
         false => 0.0,
     };
     Ok(Overhead {
-        end: (short - written(blocks, few, 0) * shot).max(0.0),
+        end: (short - written(blocks, FEW, 0) * shot).max(0.0),
         shot,
         companion,
+        memory,
+        waiting: waiting as f64,
         ..Overhead::default()
     })
 }

@@ -5,6 +5,8 @@ use crate::program::Program;
 use crate::readout::choice::{self, Choice, ChoiceError, Readout, TermCount, Wish};
 use crate::readout::probe::{MIN_PROBES, probes_for};
 
+use crate::sampler::batch::{BATCH_MOST, BATCH_SECONDS};
+
 use super::bare::Bare;
 use super::probe::ProbeCost;
 use super::profile::Profile;
@@ -38,8 +40,10 @@ pub struct Overhead {
     pub shot: f64,
     /// The same for a companion shot.
     pub companion: f64,
-    /// Bytes of the process without any register.
+    /// Bytes of the process without any register and with few shots.
     pub memory: f64,
+    /// Bytes of a finished shot that waits to be written.
+    pub waiting: f64,
 }
 
 /// Costs of a circuit by read-out.
@@ -173,17 +177,16 @@ impl Model<'_> {
             }),
             _ => None,
         };
-        let memory = self.overhead.memory
-            + terms * self.request.threads as f64 * self.bytes_per_term(readout);
+        let registers = terms * self.request.threads as f64 * self.bytes_per_term(readout);
         let mut estimate = Estimate {
             terms: (terms < 9.0e15).then_some(terms as u64),
             log10_terms: Some(log10_terms),
             probes: random_states.map(|count| count as u64),
-            ..self.estimate(readout, predicted, memory)
+            ..self.estimate(readout, predicted, registers)
         };
         estimate.refused = match choice {
             Err(reason) => Some(reason),
-            Ok(_) => self.too_much_memory(memory),
+            Ok(_) => self.too_much_memory(estimate.memory_bytes),
         };
         estimate
     }
@@ -199,14 +202,13 @@ impl Model<'_> {
                 followed
             }
         });
-        let memory = active.map_or(f64::INFINITY, |active| {
-            self.overhead.memory
-                + self.request.threads as f64 * 16.0 * (active.min(1000) as f64).exp2()
+        let registers = active.map_or(f64::INFINITY, |active| {
+            self.request.threads as f64 * 16.0 * (active.min(1000) as f64).exp2()
         });
-        let mut estimate = self.estimate(Readout::Dense, self.dense, memory);
+        let mut estimate = self.estimate(Readout::Dense, self.dense, registers);
         estimate.refused = match choice {
             Err(reason) => Some(reason),
-            Ok(_) => self.too_much_memory(memory),
+            Ok(_) => self.too_much_memory(estimate.memory_bytes),
         };
         estimate
     }
@@ -221,12 +223,17 @@ impl Model<'_> {
         })
     }
 
-    fn estimate(
-        &self,
-        readout: Readout,
-        predicted: Option<Predicted>,
-        memory_bytes: f64,
-    ) -> Estimate {
+    fn estimate(&self, readout: Readout, predicted: Option<Predicted>, registers: f64) -> Estimate {
+        let companion = self.companion_shots(readout);
+        // Companion shots are the faster ones.
+        let waiting = predicted.map_or(0.0, |predicted| {
+            in_flight(self.request.shots, predicted.seconds, self.request.threads).max(in_flight(
+                companion,
+                self.companion.unwrap_or(1.0),
+                self.request.threads,
+            ))
+        });
+        let memory_bytes = self.overhead.memory + registers + waiting * self.overhead.waiting;
         let seconds = predicted.map(|predicted| {
             // Shots go to threads whole.
             let threads = self.request.threads as u64;
@@ -234,7 +241,7 @@ impl Model<'_> {
                 0 => 0,
                 shots => shots.max(threads),
             };
-            let companion = self.companion_shots(readout) as f64;
+            let companion = companion as f64;
             let Overhead {
                 start, end, shot, ..
             } = self.overhead;
@@ -268,6 +275,14 @@ impl Model<'_> {
             _ => counted,
         }
     }
+}
+
+/// Shots that wait to be written at once: a batch.
+fn in_flight(shots: u64, seconds_a_shot: f64, threads: usize) -> f64 {
+    let most = (4 * threads) as f64 * BATCH_MOST as f64;
+    (BATCH_SECONDS / seconds_a_shot.max(1e-12))
+        .min(most)
+        .min(shots as f64)
 }
 
 /// Bytes of one term as counted from its fields.

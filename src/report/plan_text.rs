@@ -355,7 +355,7 @@ pub fn refusal(refusal: &Refusal, costliest: &[Costly], shots: u64) -> String {
             "\n  fewer shots help: there is time for about {count} with δ = 1"
         );
     }
-    if !costliest.is_empty() && refusal.log10_extent.is_some() {
+    if !costliest.is_empty() && refusal.terms {
         text.push_str(
             "\n  noise on a gate lowers its extent (1 % dephasing takes a t from 1.1716 to 1.1599, \
              5 % to 1.1130); a ccx or ccz as one gate has extent 1.78, as 7 t gates 3.03",

@@ -17,7 +17,10 @@ use super::{Interrupt, Progress, SampleError};
 const MAX_ATTEMPTS: u32 = 10_000_000;
 
 /// Wall time a batch of shots should take.
-const BATCH_SECONDS: f64 = 0.1;
+pub const BATCH_SECONDS: f64 = 0.1;
+
+/// Most shots one thread takes from a batch at a time.
+pub const BATCH_MOST: u64 = 1 << 14;
 
 /// Finished shots in order of their index.
 #[derive(Debug, Clone, Default, PartialEq)]
@@ -189,7 +192,7 @@ impl<'p> Sampler<'p> {
             next += done;
             let seconds = started.elapsed().as_secs_f64().max(1e-6);
             let wanted = size as f64 * BATCH_SECONDS / seconds;
-            size = (wanted as u64).clamp(1, (4 * size).min(1 << 14));
+            size = (wanted as u64).clamp(1, (4 * size).min(BATCH_MOST));
         }
         Ok(next - range.start)
     }

@@ -69,8 +69,8 @@ pub fn plan_figure(plan: &Plan) -> String {
         .fold(1.0, f64::max);
     let x = Scale::log(least, most, LEFT, RIGHT);
     let y = Scale::log(low, high, BOTTOM, TOP);
-    limit_of_memory(plan, &x, &mut svg);
     axes(&x, &y, &mut svg);
+    limit_of_memory(plan, &x, &mut svg);
     let mut legend = Legend::new();
     if !curve.is_empty() {
         let points: Vec<(f64, f64)> = curve
@@ -155,16 +155,34 @@ fn limit_of_memory(plan: &Plan, x: &Scale, svg: &mut Svg) {
     let limit = plan.limits.memory_bytes as f64;
     // δ falls along the curve.
     let over = plan.curve.iter().find(|point| point.memory_bytes > limit);
-    let Some(first) = over else { return };
+    let Some(first) = over else {
+        let limit = bytes(u128::from(plan.limits.memory_bytes));
+        let text = format!("all within {limit} of memory");
+        svg.text(
+            "small halo",
+            (LEFT + 8.0, BOTTOM - 10.0),
+            Anchor::Start,
+            &text,
+        );
+        return;
+    };
     let edge = x.at(first.delta);
     svg.rectangle("shade", (LEFT, TOP), (edge, BOTTOM));
-    let text = format!("more than {}", bytes(u128::from(plan.limits.memory_bytes)));
+    let text = format!(
+        "more than {} of memory",
+        bytes(u128::from(plan.limits.memory_bytes))
+    );
     if edge - LEFT > width_of(&text) + 12.0 {
-        svg.text("small", (LEFT + 8.0, BOTTOM - 10.0), Anchor::Start, &text);
+        svg.text(
+            "small halo",
+            (LEFT + 8.0, BOTTOM - 10.0),
+            Anchor::Start,
+            &text,
+        );
     } else {
         // No room inside: beside it.
         svg.text(
-            "small",
+            "small halo",
             (edge + 8.0, BOTTOM - 10.0),
             Anchor::Start,
             &format!("← {text}"),
