@@ -8,8 +8,10 @@ use super::svg::{Anchor, Shape, Svg, shortened, width_of};
 
 const WIDTH: f64 = 680.0;
 const HEIGHT: f64 = 440.0;
-const LEFT: f64 = 92.0;
-const RIGHT: f64 = 650.0;
+const LEFT: f64 = 112.0;
+const RIGHT: f64 = 656.0;
+/// Left end of title and legend.
+const MARGIN: f64 = 24.0;
 const TOP: f64 = 96.0;
 const BOTTOM: f64 = 380.0;
 
@@ -29,7 +31,7 @@ pub fn plan_figure(plan: &Plan) -> String {
     let sampled = sampled_word(plan);
     svg.text(
         "title",
-        (LEFT, 26.0),
+        (MARGIN, 26.0),
         Anchor::Start,
         &shortened(&format!("{}: {shots} shots", plan.circuit), 66),
     );
@@ -213,15 +215,15 @@ struct Legend {
 impl Legend {
     fn new() -> Self {
         Legend {
-            at: LEFT,
+            at: MARGIN,
             row: 52.0,
         }
     }
 
     fn entry(&mut self, svg: &mut Svg, line: &str, mark: Option<(&str, Shape)>, name: &str) {
         let width = 42.0 + width_of(name) + 14.0;
-        if self.at + width > WIDTH && self.at > LEFT {
-            self.at = LEFT;
+        if self.at + width > WIDTH && self.at > MARGIN {
+            self.at = MARGIN;
             self.row += 22.0;
         }
         let middle = self.row - 4.5;
