@@ -6,15 +6,16 @@
 //!
 //! circuit file → [`circuit`] (flat operations) → [`noise`] (channels in
 //! place) → [`magic`] (sites and ensembles) → [`clifford`] (frame and terms) →
-//! [`program`] (steps and flip sets) → [`readout`] (registers) → [`sampler`]
-//! (shots) → [`store`] (result file) → [`plan`] (costs) → [`report`] (summaries)
-//! → [`cli`].
+//! [`program`] (steps and flip sets) → [`exact`] (exact laws of small circuits)
+//! → [`readout`] (registers) → [`sampler`] (shots) → [`store`] (result file) →
+//! [`plan`] (costs) → [`report`] (summaries) → [`cli`].
 
 #![warn(missing_docs)]
 
 pub mod circuit;
 pub mod cli;
 pub mod clifford;
+pub mod exact;
 pub mod magic;
 pub mod noise;
 pub mod plan;

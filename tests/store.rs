@@ -4,8 +4,8 @@ use std::path::Path;
 
 use shottower::sampler::{Family, FaultEvent, Rows};
 use shottower::store::{
-    AuditBlock, Finished, Header, LocationRow, Part, RegisterHeader, ShotFile, SiteRow, StoreError,
-    Writer, WriterOptions,
+    AuditBlock, Finished, Header, LocationRow, Part, ReductionHeader, RegisterHeader, ShotFile,
+    SiteRow, StoreError, Writer, WriterOptions,
 };
 
 const ALL: WriterOptions = WriterOptions {
@@ -34,6 +34,14 @@ fn header() -> Header {
         delta: Some(0.1),
         readout: "walk".into(),
         log_extent: 2.5,
+        reduction: Some(ReductionHeader {
+            log_extent_as_written: 4.5,
+            log_extent_after_noise: 3.5,
+            sites_as_written: 9,
+            sites_merged: 1,
+            sites_deterministic: 2,
+            sites_unobservable: 3,
+        }),
         terms: Some(233),
         mixing_weight: 0.05,
         shots_total: 1000,

@@ -6,9 +6,10 @@ use std::io::Read;
 use std::path::Path;
 
 use crate::circuit::{self, Circuit, ParseOptions};
-use crate::magic::{self, Schedule, ScheduleOptions};
+use crate::magic::mixing::log_extent;
+use crate::magic::{self, Schedule, ScheduleOptions, Written};
 use crate::noise::{self, NoiseFile};
-use crate::program::Program;
+use crate::program::{self, Program, Reduced, SiteCounts};
 
 use super::{CommandError, message, refuse};
 
@@ -29,6 +30,15 @@ pub(super) struct Input {
     pub circuit: Circuit,
     pub title: Option<String>,
     pub program: Program,
+    pub reduction: Reduction,
+}
+
+/// What came of the non-Clifford gates.
+pub(super) struct Reduction {
+    pub written: Written,
+    /// ln ξ once noise was merged.
+    pub log_extent_after_noise: f64,
+    pub counts: SiteCounts,
 }
 
 /// The same before it is compiled.
@@ -37,6 +47,7 @@ pub(super) struct Scheduled {
     pub circuit: Circuit,
     pub title: Option<String>,
     pub schedule: Schedule,
+    pub reduction: Reduction,
 }
 
 /// How the input is read.
@@ -55,6 +66,7 @@ pub(super) fn load(reading: &Reading<'_>) -> Result<Input, CommandError> {
         circuit,
         title,
         schedule,
+        reduction,
     } = schedule(reading)?;
     let program = Program::compile(schedule, circuit.qubits.len(), circuit.bits)?;
     Ok(Input {
@@ -62,6 +74,7 @@ pub(super) fn load(reading: &Reading<'_>) -> Result<Input, CommandError> {
         circuit,
         title,
         program,
+        reduction,
     })
 }
 
@@ -111,13 +124,31 @@ pub(super) fn schedule(reading: &Reading<'_>) -> Result<Scheduled, CommandError>
             absorb: reading.absorb,
         },
     );
+    drop(noisy);
+    let log_extent_after_noise = log_extent(&schedule.sites);
+    let Reduced { schedule, counts } = program::reduce(schedule, qubits, &recorded(&circuit));
+    let reduction = Reduction {
+        written: magic::as_written(&circuit),
+        log_extent_after_noise,
+        counts,
+    };
     let title = noise_file.and_then(|file| file.title);
     Ok(Scheduled {
         texts,
         circuit,
         title,
         schedule,
+        reduction,
     })
+}
+
+/// Which bits are written to the result file.
+fn recorded(circuit: &Circuit) -> Vec<bool> {
+    let mut recorded = vec![false; circuit.bits];
+    for register in circuit.registers.iter().filter(|it| it.recorded) {
+        recorded[register.first..register.first + register.width].fill(true);
+    }
+    recorded
 }
 
 fn read(what: &str, path: &Path) -> Result<String, CommandError> {

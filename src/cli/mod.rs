@@ -17,12 +17,14 @@ mod progress;
 mod rehearse;
 mod run;
 mod show;
+mod verify;
 
 use std::process::ExitCode;
 
 use clap::Parser;
 
 use crate::circuit::Diagnostic;
+use crate::exact::ExactError;
 use crate::program::CompileError;
 use crate::readout::choice::ChoiceError;
 use crate::sampler::SampleError;
@@ -42,6 +44,12 @@ enum CommandError {
     /// The circuit cannot be compiled.
     #[error(transparent)]
     Compile(#[from] CompileError),
+    /// There is no exact distribution to compare with.
+    #[error(transparent)]
+    Exact(#[from] ExactError),
+    /// Drawn shots do not follow their law.
+    #[error("{0}")]
+    Rejected(String),
     /// No read-out can run the circuit as asked.
     #[error(transparent)]
     Choice(#[from] ChoiceError),
@@ -86,10 +94,12 @@ impl CommandError {
             | CommandError::Usage(_)
             | CommandError::Compile(_)
             | CommandError::Choice(_)
+            | CommandError::Exact(_)
             | CommandError::Output(_) => 2,
             CommandError::Sample(_)
             | CommandError::Store(_)
             | CommandError::Stopped { .. }
+            | CommandError::Rejected(_)
             | CommandError::Picture { .. }
             | CommandError::Print(_) => 1,
             CommandError::Interrupted(_) => 130,
@@ -110,6 +120,7 @@ pub fn main() -> ExitCode {
     };
     let result = match &options.command {
         Command::Run(run) => run::run(run),
+        Command::Verify(verify) => verify::verify(verify),
         Command::Plan(plan) => plan::plan(plan),
         Command::Show(show) => show::show(show),
     };

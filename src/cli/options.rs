@@ -33,6 +33,8 @@ pub(super) enum Command {
     Run(Run),
     /// Tell what a circuit costs before it is run
     Plan(Plan),
+    /// Check drawn shots of a small circuit against its exact distribution
+    Verify(Verify),
     /// Print what a result file holds
     Show(Show),
 }
@@ -84,8 +86,9 @@ pub(super) struct Run {
     #[arg(long, value_enum, default_value_t = ReadoutOption::Auto)]
     pub readout: ReadoutOption,
 
-    /// Number of stabiliser terms, or "average" for the number that makes
-    /// companion-corrected averages cheapest [default: from δ]
+    /// Number of stabiliser terms k, instead of --delta. "average" takes k about
+    /// ξ + 3, which makes averages corrected with companion shots cheapest; raw
+    /// shots are then far from exact [default: from δ]
     #[arg(long, value_name = "K", value_parser = terms)]
     pub terms: Option<TermsOption>,
 
@@ -126,6 +129,77 @@ pub(super) struct Run {
     pub json: bool,
 
     /// No progress and no summary
+    #[arg(long, short)]
+    pub quiet: bool,
+}
+
+/// Check drawn shots of a small circuit against its exact distribution.
+///
+/// The exact distributions of the circuit and of its companion are computed with
+/// density matrices, straight from the circuit; shots are drawn as `run` would
+/// draw them, and tested against [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ).
+#[derive(Debug, Args)]
+#[command(
+    after_help = "Exit status: 0 the shots follow their law, 1 they do not (p below \
+    1e-6), 2 wrong input or a circuit that is too large.\n\nExamples:\n  \
+    shottower verify circuit.qasm --noise bench.toml --shots 100000 --readout walk\n  \
+    shottower verify circuit.qasm --shots 50000 --terms 4 --readout walk --seed 7 --json"
+)]
+pub(super) struct Verify {
+    /// Circuit file, OpenQASM 3 or 2
+    #[arg(value_name = "CIRCUIT")]
+    pub circuit: PathBuf,
+
+    /// Noise file, TOML
+    #[arg(long, value_name = "FILE")]
+    pub noise: Option<PathBuf>,
+
+    /// Number of shots
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(1..))]
+    pub shots: u64,
+
+    /// Trace-norm error δ of the averaged output state, above 0 and below 2
+    #[arg(long, value_name = "D", default_value_t = 0.1, value_parser = delta)]
+    pub delta: f64,
+
+    /// Seed; the same seed gives the same shots as `run` [default: random]
+    #[arg(long, value_name = "S")]
+    pub seed: Option<u64>,
+
+    /// How outcomes are read out
+    #[arg(long, value_enum, default_value_t = ReadoutOption::Auto)]
+    pub readout: ReadoutOption,
+
+    /// Number of stabiliser terms, or "average"; few terms (2 to 8) make the
+    /// companion's share large and the test sharp [default: from δ]
+    #[arg(long, value_name = "K", value_parser = terms)]
+    pub terms: Option<TermsOption>,
+
+    /// Number of companion shots [default: as many as shots; 0 for dense]
+    #[arg(long, value_name = "M")]
+    pub companion: Option<u64>,
+
+    /// Number of threads [default: all cores]
+    #[arg(long, value_name = "T", value_parser = clap::value_parser!(u16).range(1..=256))]
+    pub threads: Option<u16>,
+
+    /// Give an `input` of the circuit its value
+    #[arg(long, value_name = "NAME=VALUE", value_parser = assignment)]
+    pub set: Vec<(String, f64)>,
+
+    /// Merge noise into the non-Clifford places it stands next to
+    #[arg(long, value_enum, default_value_t = Switch::On)]
+    pub absorb: Switch,
+
+    /// Most operations after unrolling
+    #[arg(long, value_name = "N", default_value_t = 1_000_000)]
+    pub max_ops: usize,
+
+    /// Print the report as JSON
+    #[arg(long)]
+    pub json: bool,
+
+    /// No progress and no report, only the exit status
     #[arg(long, short)]
     pub quiet: bool,
 }

@@ -40,6 +40,7 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
         circuit,
         title,
         schedule,
+        reduction,
     } = input::schedule(&Reading {
         circuit: &options.circuit,
         noise: options.noise.as_deref(),
@@ -81,6 +82,7 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
                 circuit,
                 title,
                 program,
+                reduction,
             };
             let sparsifier = Sparsifier::new(input.program.sites());
             let log_extent = log_extent(input.program.sites());

@@ -12,7 +12,8 @@ use crate::readout::choice::{Choice, Readout, TermCount, Wish};
 use crate::report::Summary;
 use crate::sampler::{Block, Drive};
 use crate::store::{
-    AuditBlock, Finished, Header, Part, RegisterHeader, ShotFile, StoreError, Writer, WriterOptions,
+    AuditBlock, Finished, Header, Part, ReductionHeader, RegisterHeader, ShotFile, StoreError,
+    Writer, WriterOptions,
 };
 
 use super::CommandError;
@@ -155,13 +156,6 @@ impl<'a> Job<'a> {
             None if choice.readout == Readout::Dense => 0,
             None => options.shots,
         };
-        if companion > 0 && input.program.has_damping() {
-            return Err(CommandError::Usage(
-                "companion shots cannot be drawn of a circuit that damps an entangled qubit: \
-                 leave out --companion"
-                    .to_owned(),
-            ));
-        }
         let part = options
             .part
             .map_or(Part::default(), |(index, count)| Part { index, count });
@@ -198,6 +192,7 @@ impl<'a> Job<'a> {
             delta: decided.delta,
             readout: choice.readout.word().to_owned(),
             log_extent,
+            reduction: Some(reduction(input)),
             terms: choice.terms,
             mixing_weight: choice.mixing_weight,
             shots_total: options.shots,
@@ -358,6 +353,21 @@ pub(super) fn append(writer: &mut Writer, block: &Block, faults: bool) -> Result
         writer.append_faults(&block.faults)?;
     }
     Ok(())
+}
+
+/// What came of the non-Clifford gates, sites without effect on the compiled
+/// program included.
+fn reduction(input: &Input) -> ReductionHeader {
+    let counts = &input.reduction.counts;
+    let idle = input.program.all_sites().filter(|(_, kept)| !kept).count();
+    ReductionHeader {
+        log_extent_as_written: input.reduction.written.log_extent,
+        log_extent_after_noise: input.reduction.log_extent_after_noise,
+        sites_as_written: input.reduction.written.gates as u64,
+        sites_merged: counts.merged as u64,
+        sites_deterministic: (counts.deterministic + idle) as u64,
+        sites_unobservable: counts.unobservable as u64,
+    }
 }
 
 fn recorded_registers(input: &Input) -> Vec<&BitRegister> {

@@ -20,7 +20,7 @@ pub(super) fn show(options: &Show) -> Result<(), CommandError> {
     }
 }
 
-/// Prints a summary on stdout. A closed pipe is no error.
+/// Prints a summary on stdout.
 pub(super) fn print(summary: &Summary, json: bool) -> Result<(), CommandError> {
     super::print(&match json {
         true => summary.to_json(),

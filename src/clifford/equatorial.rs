@@ -31,6 +31,7 @@ mod tests;
 use num_complex::Complex64;
 use rand::Rng;
 
+use super::kernels::kernel;
 use super::terms::bits::Bits;
 use super::terms::matrix::Matrix;
 use super::terms::phase::Diagonal;
@@ -140,14 +141,34 @@ impl<const W: usize> Terms<W> {
             self.slots()
         );
         let mut scratch = Scratch::new(self.slots());
-        let mut sums = [Complex64::ZERO; 2];
-        for (head, rows) in self.views() {
-            let values = scratch.overlap(form, head, &rows, slot);
-            sums[0] += values[0];
-            sums[1] += values[1];
-        }
-        sums
+        all_overlaps(self.level(), self, form, slot, &mut scratch)
     }
+}
+
+kernel! {
+    /// The sums over all terms, compiled for every level.
+    fn all_overlaps<W>(
+        terms: &Terms<W>,
+        form: &EquatorialForm<W>,
+        slot: usize,
+        scratch: &mut Scratch<W>,
+    ) -> [Complex64; 2] = sum_of_overlaps;
+}
+
+#[inline(always)]
+fn sum_of_overlaps<const W: usize>(
+    terms: &Terms<W>,
+    form: &EquatorialForm<W>,
+    slot: usize,
+    scratch: &mut Scratch<W>,
+) -> [Complex64; 2] {
+    let mut sums = [Complex64::ZERO; 2];
+    for (head, rows) in terms.views() {
+        let values = scratch.overlap(form, head, &rows, slot);
+        sums[0] += values[0];
+        sums[1] += values[1];
+    }
+    sums
 }
 
 /// Working space of one overlap: a Z₄-valued form in two lanes.
@@ -188,6 +209,7 @@ impl<const W: usize> Scratch<W> {
     }
 
     /// ⟨θ|Π_m φ⟩ for m = 0 and 1.
+    #[inline(always)]
     fn overlap(
         &mut self,
         form: &EquatorialForm<W>,

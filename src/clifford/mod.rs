@@ -10,5 +10,6 @@
 
 pub mod equatorial;
 pub mod frame;
+pub mod kernels;
 pub mod pauli;
 pub mod terms;

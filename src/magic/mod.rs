@@ -14,10 +14,11 @@ pub mod extent;
 pub mod mixing;
 mod prepared;
 mod rotation;
-mod schedule;
+pub(crate) mod schedule;
 pub mod site;
 pub mod sparsify;
 mod splitting;
+mod written;
 
 use std::sync::Arc;
 
@@ -29,7 +30,8 @@ pub use schedule::{ScheduleOptions, schedule};
 pub use site::{
     CczSite, PreparedMember, PreparedSite, RotationMember, RotationSite, Site, SiteKind, Stabiliser,
 };
-pub use sparsify::{Draw, Sparsifier};
+pub use sparsify::{Components, Draw, Sparsifier, draw_plane};
+pub use written::{Written, as_written};
 
 /// A noisy circuit whose non-Clifford gates have become sites.
 #[derive(Debug, Clone)]

@@ -42,7 +42,19 @@ impl PreparedSite {
                 .map(|(p, state)| splitting::face(p, octant.restored(state), &octant))
                 .collect(),
         };
-        PreparedSite { bloch, members }
+        PreparedSite {
+            bloch,
+            ideal: bloch,
+            members,
+        }
+    }
+
+    /// The same; `ideal` is the Bloch vector had there been no noise.
+    pub fn with_ideal(bloch: Bloch, ideal: Bloch) -> PreparedSite {
+        PreparedSite {
+            ideal,
+            ..PreparedSite::new(bloch)
+        }
     }
 
     /// Extent Ξ of the state, the (Σ|weight|)² of every member: 1 to 3 − √3.

@@ -130,6 +130,8 @@ pub struct CczSite;
 pub struct PreparedSite {
     /// Bloch vector (x, y, z) of the exact state.
     pub bloch: [f64; 3],
+    /// Bloch vector had there been no noise.
+    pub ideal: [f64; 3],
     /// The members; probabilities sum to 1.
     pub members: Vec<PreparedMember>,
 }

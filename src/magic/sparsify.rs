@@ -26,14 +26,13 @@ pub struct Draw {
     pub members: Vec<u16>,
     /// Number of terms k.
     pub terms: usize,
-    /// The component of every site in every term, at `site·terms + term`: for a
-    /// rotation the power of diag(1, i), 0…3; for a CCZ b of
-    /// [`CczSite::component`], 0…7; for a prepared qubit the index into the
-    /// member's components.
-    pub components: Vec<u8>,
-    /// Weight of every term.
-    pub weights: Vec<Complex64>,
-    /// log ξ that the weights belong to; 0 for a companion.
+    /// The component of every site in every term: for a rotation the power of
+    /// diag(1, i), 0…3; for a CCZ b of [`CczSite::component`], 0…7; for a
+    /// prepared qubit the index into the member's components.
+    pub components: Components,
+    /// Modulus √ξ/k of every term's weight.
+    pub modulus: f64,
+    /// log ξ that the modulus belongs to; 0 for a companion.
     pub log_extent: f64,
 }
 
@@ -48,9 +47,143 @@ impl Draw {
         usize::from(self.members[site as usize])
     }
 
-    /// The component of `site` in every term.
-    pub fn row(&self, site: usize) -> &[u8] {
-        &self.components[site * self.terms..(site + 1) * self.terms]
+    /// The component of `site` in one term.
+    pub fn component(&self, site: usize, term: usize) -> u8 {
+        self.components.at(site, term)
+    }
+
+    /// Weight of a term: the modulus times the phases of its components'
+    /// weights. `sites` are those the draw was made for.
+    pub fn weight(&self, sites: &[Site], term: usize) -> Complex64 {
+        let phases = sites.iter().enumerate().map(|(index, site)| {
+            let factors = site.factors(self.member(index as u32));
+            let factor = factors[usize::from(self.component(index, term))];
+            factor / factor.norm()
+        });
+        self.modulus * phases.product::<Complex64>()
+    }
+}
+
+/// Components in bit planes: a plane has one bit of one site's component for
+/// every term, bit j mod 64 of word j / 64 for term j. Bits past the last term
+/// mean nothing.
+#[derive(Debug, Default)]
+pub struct Components {
+    bits: Vec<u64>,
+    /// Words of a plane.
+    words: usize,
+    /// First plane of every site, and the number of planes at the end.
+    first: Vec<u32>,
+}
+
+impl Clone for Components {
+    fn clone(&self) -> Self {
+        Components {
+            bits: self.bits.clone(),
+            words: self.words,
+            first: self.first.clone(),
+        }
+    }
+
+    // The derived one would allocate.
+    fn clone_from(&mut self, source: &Self) {
+        self.bits.clone_from(&source.bits);
+        self.words = source.words;
+        self.first.clone_from(&source.first);
+    }
+}
+
+impl Components {
+    fn clear(&mut self, terms: usize) {
+        self.bits.clear();
+        self.words = terms.div_ceil(64);
+        self.first.clear();
+        self.first.push(0);
+    }
+
+    /// Planes of the next site.
+    fn push(&mut self, planes: usize) -> &mut [u64] {
+        let start = self.bits.len();
+        self.bits.resize(start + planes * self.words, 0);
+        let last = self.first[self.first.len() - 1];
+        self.first.push(last + planes as u32);
+        &mut self.bits[start..]
+    }
+
+    /// All planes one after another.
+    pub fn bits(&self) -> &[u64] {
+        &self.bits
+    }
+
+    /// Words of a plane.
+    pub fn words(&self) -> usize {
+        self.words
+    }
+
+    /// The first plane of a site, and how many it has. Plane c has bit c.
+    pub fn planes(&self, site: usize) -> (usize, usize) {
+        let (first, end) = (self.first[site], self.first[site + 1]);
+        (first as usize, (end - first) as usize)
+    }
+
+    /// How many planes there are.
+    pub fn count(&self) -> usize {
+        self.bits.len().checked_div(self.words).unwrap_or(0)
+    }
+
+    /// Adds a plane that belongs to no site; its index. What it holds is to be
+    /// written.
+    pub fn add_plane(&mut self) -> usize {
+        let index = self.count();
+        self.bits.resize(self.bits.len() + self.words, 0);
+        index
+    }
+
+    /// Forgets the planes from this index on.
+    pub fn truncate(&mut self, planes: usize) {
+        self.bits.truncate(planes * self.words);
+    }
+
+    /// One plane.
+    pub fn plane(&self, index: usize) -> &[u64] {
+        &self.bits[index * self.words..][..self.words]
+    }
+
+    /// A plane to be written anew.
+    pub fn plane_mut(&mut self, index: usize) -> &mut [u64] {
+        &mut self.bits[index * self.words..][..self.words]
+    }
+
+    /// The component of a site in a term.
+    pub fn at(&self, site: usize, term: usize) -> u8 {
+        let (first, count) = self.planes(site);
+        (0..count).fold(0, |component, plane| {
+            let word = self.bits[(first + plane) * self.words + term / 64];
+            component | ((word >> (term % 64) & 1) as u8) << plane
+        })
+    }
+}
+
+/// Fills a plane with bits that are 1 with chance 1 − threshold·2^−64.
+///
+/// Bit by bit from the highest a uniform number of 64 bits is compared with the
+/// threshold, for 64 terms at a time; after a few bits all of them are decided.
+pub fn draw_plane<R: Rng + ?Sized>(threshold: u64, rng: &mut R, plane: &mut [u64]) {
+    for word in plane {
+        let (mut ones, mut open) = (0, !0u64);
+        let mut left = threshold;
+        // Numbers equal so far are at least the threshold once only 0s are left of it.
+        while open != 0 && left != 0 {
+            let drawn = rng.next_u64();
+            if left >> 63 == 1 {
+                open &= drawn;
+            } else {
+                ones |= open & drawn;
+                open &= !drawn;
+            }
+            left <<= 1;
+        }
+        *word = ones | open;
     }
 }
 
@@ -115,13 +248,11 @@ impl Sparsifier {
         debug_assert!(terms > 0, "at least one term is needed");
         debug_assert_eq!(draw.members.len(), self.sites.len());
         draw.terms = terms;
-        draw.weights.clear();
-        draw.weights.resize(terms, Complex64::new(modulus, 0.0));
-        draw.components.clear();
-        draw.components.resize(terms * self.sites.len(), 0);
-        let rows = draw.components.chunks_exact_mut(terms.max(1));
-        for ((site, &member), row) in self.sites.iter().zip(&draw.members).zip(rows) {
-            site.members[usize::from(member)].fill(rng, row, &mut draw.weights);
+        draw.modulus = modulus;
+        draw.components.clear(terms);
+        for (site, &member) in self.sites.iter().zip(&draw.members) {
+            let planes = draw.components.push(site.planes);
+            site.members[usize::from(member)].fill(rng, terms, planes);
         }
     }
 }
@@ -129,6 +260,8 @@ impl Sparsifier {
 /// The members of a site, ready to draw from.
 #[derive(Debug, Clone)]
 struct Ensemble {
+    /// Bits of a component.
+    planes: usize,
     /// Cumulative chances of all members but the last, in units of 2^−64.
     thresholds: SmallVec<[u64; 3]>,
     members: SmallVec<[Splitting; 2]>,
@@ -155,8 +288,11 @@ impl Ensemble {
     }
 
     fn from_members(members: impl IntoIterator<Item = (f64, Splitting)>) -> Ensemble {
-        let (chances, members): (SmallVec<[f64; 4]>, _) = members.into_iter().unzip();
+        let (chances, members): (SmallVec<[f64; 4]>, SmallVec<[Splitting; 2]>) =
+            members.into_iter().unzip();
+        let planes = members.iter().map(Splitting::planes).max().unwrap_or(0);
         Ensemble {
+            planes,
             thresholds: cumulative(&chances),
             members,
         }
@@ -170,8 +306,8 @@ enum Splitting {
     Weighted {
         /// Cumulative chances of all but the last, in units of 2^−64.
         thresholds: SmallVec<[u64; 3]>,
-        /// Component index and phase of its weight.
-        choices: SmallVec<[(u8, Complex64); 3]>,
+        /// Component indices.
+        choices: SmallVec<[u8; 3]>,
     },
     /// Eight components of equal positive weight, a CCZ.
     EightEqual,
@@ -183,53 +319,43 @@ impl Splitting {
         let moduli: SmallVec<[f64; 4]> = used().map(|(_, weight)| weight.norm()).collect();
         Splitting::Weighted {
             thresholds: cumulative(&moduli),
-            choices: used()
-                .map(|(index, weight)| (index, weight / weight.norm()))
-                .collect(),
+            choices: used().map(|(index, _)| index).collect(),
         }
     }
 
-    /// Draws a component for every term, and turns the terms' weights by its
-    /// phase.
-    fn fill<R: Rng + ?Sized>(&self, rng: &mut R, row: &mut [u8], weights: &mut [Complex64]) {
+    /// Bits its component indices take.
+    fn planes(&self) -> usize {
+        let most = match self {
+            Splitting::Weighted { choices, .. } => choices.iter().copied().max().unwrap_or(0),
+            Splitting::EightEqual => CczSite::COMPONENTS - 1,
+        };
+        (u8::BITS - most.leading_zeros()) as usize
+    }
+
+    /// Draws a component for every term.
+    fn fill<R: Rng + ?Sized>(&self, rng: &mut R, terms: usize, planes: &mut [u64]) {
+        let words = terms.div_ceil(64);
         match self {
             Splitting::Weighted {
                 thresholds,
                 choices,
             } => match (thresholds.as_slice(), choices.as_slice()) {
-                ([], [(index, phase)]) => {
-                    row.fill(*index);
-                    if *phase != Complex64::new(1.0, 0.0) {
-                        weights.iter_mut().for_each(|weight| *weight *= phase);
-                    }
-                }
-                // By far the most frequent, and without a branch.
-                (&[threshold], &[first, second]) => {
-                    let choices = [first, second];
-                    for (component, weight) in row.iter_mut().zip(weights) {
-                        let (index, phase) = choices[usize::from(rng.next_u64() >= threshold)];
-                        *component = index;
-                        *weight *= phase;
+                (&[threshold], [0, 1]) => draw_plane(threshold, rng, &mut planes[..words]),
+                ([], [index]) => {
+                    for (bit, plane) in planes.chunks_exact_mut(words).enumerate() {
+                        plane.fill(u64::from(index >> bit & 1).wrapping_neg());
                     }
                 }
                 (thresholds, choices) => {
-                    for (component, weight) in row.iter_mut().zip(weights) {
-                        let (index, phase) = choices[below(thresholds, rng.next_u64())];
-                        *component = index;
-                        *weight *= phase;
+                    for term in 0..terms {
+                        let index = choices[below(thresholds, rng.next_u64())];
+                        for (bit, plane) in planes.chunks_exact_mut(words).enumerate() {
+                            plane[term / 64] |= u64::from(index >> bit & 1) << (term % 64);
+                        }
                     }
                 }
             },
-            Splitting::EightEqual => {
-                // Three bits a component, 21 components a word.
-                for chunk in row.chunks_mut(21) {
-                    let mut bits = rng.next_u64();
-                    for component in chunk {
-                        *component = bits as u8 & (CczSite::COMPONENTS - 1);
-                        bits >>= 3;
-                    }
-                }
-            }
+            Splitting::EightEqual => planes.iter_mut().for_each(|word| *word = rng.next_u64()),
         }
     }
 }

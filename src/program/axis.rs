@@ -60,11 +60,12 @@ impl Compiler<'_> {
         if acting.is_identity() {
             return Ok(Gathered::Known { negative });
         }
-        if let Some(column) = ones(&acting.x).next() {
+        if let Some(column) = self.highest(ones(&acting.x)) {
             self.rotate_onto(column, &acting);
             return Ok(Gathered::Column { column, negative });
         }
-        let free = ones(&acting.z).find(|column| !reserved.contains(column));
+        let free = ones(&acting.z).filter(|column| !reserved.contains(column));
+        let free = self.highest(free);
         let Some(column) = free else {
             return Ok(Gathered::Reserved {
                 columns: ones(&acting.z).collect(),
@@ -77,6 +78,13 @@ impl Compiler<'_> {
             self.steps.push(Step::ControlledNot { control, target });
         }
         Ok(Gathered::Column { column, negative })
+    }
+
+    /// The column in the highest slot. A measurement frees its slot: taken from
+    /// the top, those still in use stay together at the bottom, which is as far as
+    /// passes over the rows of a term go.
+    fn highest(&self, columns: impl Iterator<Item = usize>) -> Option<usize> {
+        columns.max_by_key(|&column| self.slots[column])
     }
 
     /// Rule 1: makes an inactive column active with the axis on its Z.

@@ -18,6 +18,7 @@ mod axis;
 mod compile;
 mod faults;
 mod flips;
+mod reduce;
 mod step;
 mod turns;
 
@@ -30,6 +31,7 @@ use crate::magic::{Kind, Schedule, Site, SiteKind};
 
 pub use faults::{ChoiceTable, FaultGroup, FaultPlace, Location, LocationKind};
 pub use flips::{SetArena, SetId};
+pub use reduce::{Reduced, SiteCounts, reduce};
 pub use step::{AffineInput, Outcome, Primitive, Reading, Step};
 
 /// Slots a register may have at most.
@@ -252,6 +254,58 @@ impl Program {
             .zip(self.kept.iter().map(Option::is_some))
     }
 
+    /// The schedule it was compiled from.
+    pub fn schedule(&self) -> &Schedule {
+        &self.schedule
+    }
+
+    /// Index of the first instruction of the schedule that changes the
+    /// structure under a condition, if there is one.
+    pub fn first_branch(&self) -> Option<usize> {
+        match &self.first.end {
+            End::Finished => None,
+            End::Branch(branch) => Some(branch.instruction),
+        }
+    }
+
+    /// Instructions of the schedule that damp the register in the first
+    /// segment, in order of their index.
+    pub fn damped_instructions(&self) -> Vec<usize> {
+        let damped: Vec<u32> = self
+            .first
+            .steps
+            .iter()
+            .filter_map(|step| match step {
+                Step::Damp { location, .. } => Some(*location),
+                _ => None,
+            })
+            .collect();
+        let mut instructions: Vec<usize> = self
+            .location_of
+            .iter()
+            .filter(|(_, location)| damped.contains(location))
+            .map(|(&instruction, _)| instruction)
+            .collect();
+        instructions.sort_unstable();
+        instructions
+    }
+
+    /// Sites met in the first segment before anything of the register is
+    /// measured or damped, in order; indices into [`Program::sites`].
+    pub fn early_sites(&self) -> Vec<u32> {
+        let reads = |step: &&Step| matches!(step, Step::Measure { .. } | Step::Damp { .. });
+        let steps = self.first.steps.iter().take_while(|step| !reads(step));
+        steps
+            .filter_map(|step| match step {
+                Step::Prepare { site, .. }
+                | Step::Rotate { site, .. }
+                | Step::Ccz { site, .. }
+                | Step::Skip { site } => Some(*site),
+                _ => None,
+            })
+            .collect()
+    }
+
     /// Places where a fault may happen, in circuit order.
     pub fn locations(&self) -> &[Location] {
         &self.locations
@@ -270,14 +324,31 @@ impl Program {
 
     /// Whether amplitude damping may meet an entangled qubit.
     pub fn has_damping(&self) -> bool {
-        let damps = |step: &Step| matches!(step, Step::Damp { .. });
-        self.first.steps.iter().any(damps)
-            || (self.branches()
-                && self
-                    .schedule
-                    .instructions
-                    .iter()
-                    .any(|instruction| matches!(instruction.kind, Kind::Damping { .. })))
+        self.log_damping_trace() > 0.0
+    }
+
+    /// log of a bound on the trace of the companion circuit, in which damping of
+    /// an entangled qubit is the map sρ + (1−s)·|0⟩⟨0|ρ|0⟩⟨0| + K1ρK1†, s = √(1−γ):
+    /// the sum of ln(1 + s(1−s)). Without branches over the dampings that meet an
+    /// entangled qubit, else over all.
+    pub fn log_damping_trace(&self) -> f64 {
+        let log_trace = |gamma: f64| {
+            let s = (1.0 - gamma).sqrt();
+            // 1 at the axis value 0, s + γ at the value 1.
+            (s * (1.0 - s)).ln_1p()
+        };
+        if self.branches() {
+            let damping = |instruction: &crate::magic::Instruction| match instruction.kind {
+                Kind::Damping { gamma, .. } => log_trace(gamma),
+                _ => 0.0,
+            };
+            return self.schedule.instructions.iter().map(damping).sum();
+        }
+        let damping = |step: &Step| match *step {
+            Step::Damp { gamma, .. } => log_trace(gamma),
+            _ => 0.0,
+        };
+        self.first.steps.iter().map(damping).sum()
     }
 
     /// Slots a register needs: exact without branches, else an upper bound.

@@ -98,20 +98,13 @@ pub enum ChoiceError {
         /// What would fit.
         advice: String,
     },
-    /// Damping of an entangled qubit with terms.
+    /// Damping of an entangled qubit with `probe`.
     #[error(
-        "amplitude damping or relaxation acts on a qubit after it was entangled or measured, \
-         which only read-out dense can do (with at most {} active qubits; this circuit needs \
-         {active}), not {}: choose --readout dense, or make the damping act on fresh qubits",
-        dense::MAX_ACTIVE,
-        .readout.word()
+        "amplitude damping or relaxation acts on a qubit after it was entangled or measured: \
+         read-out probe draws its outcomes from norms, which the two ways a damping can go \
+         would have to share; choose --readout walk or dense"
     )]
-    Damping {
-        /// The read-out that was tried.
-        readout: Readout,
-        /// Active qubits of the circuit.
-        active: usize,
-    },
+    Damping,
     /// Too many random states an estimate.
     #[error(
         "read-out probe would need {probes:.1e} random states an estimate for δ = {delta}: raise \
@@ -240,12 +233,11 @@ fn terms_choice(
     delta: f64,
     wish: &Wish,
 ) -> Result<(u64, u128), ChoiceError> {
-    if program.has_damping() {
-        return Err(ChoiceError::Damping {
-            readout,
-            active: program.peak_active(),
-        });
+    if readout == Readout::Probe && program.has_damping() {
+        return Err(ChoiceError::Damping);
     }
+    // λ stays below δ/2 whatever the trace of the companion turns out to be.
+    let log_extent = log_extent + program.log_damping_trace();
     let terms = match wish.terms {
         TermCount::Fixed(terms) => Some(terms),
         TermCount::Average => terms_for_average(log_extent),

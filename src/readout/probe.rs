@@ -181,10 +181,14 @@ impl<'p, const W: usize> Probe<'p, W> {
         let found = &self.sites[site as usize];
         self.log_extent += found.extent.ln();
         let factors = found.factors(draw.member(site));
-        let components = draw.row(site as usize);
         self.terms
-            .scale(|label| factors[usize::from(components[label as usize])]);
+            .scale(|label| factors[component(draw, site, label)]);
     }
+}
+
+/// The component of a site in the term of this label.
+fn component(draw: &Draw, site: u32, label: u32) -> usize {
+    usize::from(draw.component(site as usize, label as usize))
 }
 
 impl<const W: usize> Register for Probe<'_, W> {
@@ -211,9 +215,8 @@ impl<const W: usize> Register for Probe<'_, W> {
         };
         self.set_active(slot);
         let member = &prepared.members[draw.member(site)];
-        let components = draw.row(site as usize);
         self.terms.prepare(usize::from(slot), |label| {
-            member.components[usize::from(components[label as usize])].0
+            member.components[component(draw, site, label)].0
         });
         self.meet(site, draw);
     }
@@ -230,18 +233,18 @@ impl<const W: usize> Register for Probe<'_, W> {
 
     fn rotate(&mut self, slot: u16, site: u32, flipped: bool, draw: &Draw, _rng: &mut ShotRng) {
         self.meet(site, draw);
-        let components = draw.row(site as usize);
         if !flipped {
-            self.terms
-                .diagonal(usize::from(slot), |label| components[label as usize]);
+            self.terms.diagonal(usize::from(slot), |label| {
+                component(draw, site, label) as u8
+            });
             return;
         }
         // diag(1, i^b) on x⊕1 is i^b·diag(1, i^−b).
         self.terms.diagonal(usize::from(slot), |label| {
-            (4 - components[label as usize]) & 3
+            (4 - component(draw, site, label) as u8) & 3
         });
         self.terms
-            .scale(|label| I_POWERS[usize::from(components[label as usize])]);
+            .scale(|label| I_POWERS[component(draw, site, label)]);
     }
 
     fn quarter_turn(&mut self, slot: u16, flipped: bool) {
@@ -252,12 +255,11 @@ impl<const W: usize> Register for Probe<'_, W> {
 
     fn ccz(&mut self, slots: [u16; 3], flipped: [bool; 3], site: u32, draw: &Draw) {
         self.meet(site, draw);
-        let components = draw.row(site as usize);
         let table: [QuadraticPhase; 8] = std::array::from_fn(|b| {
             QuadraticPhase::from(CczSite::component(b as u8)).flipped(flipped)
         });
         self.terms.quadratic(slots.map(usize::from), |label| {
-            table[usize::from(components[label as usize])]
+            table[component(draw, site, label)]
         });
     }
 
@@ -265,10 +267,9 @@ impl<const W: usize> Register for Probe<'_, W> {
         self.meet(site, draw);
         if let SiteKind::Ccz(_) = self.sites[site as usize].kind {
             // Σ weight·D_b(0) = 1 needs the sign; diag(1, i^b) is 1 there.
-            let components = draw.row(site as usize);
             self.terms.scale(|label| {
-                let b = components[label as usize];
-                let negative = CczSite::component(b).is_negative_at(0);
+                let b = component(draw, site, label);
+                let negative = CczSite::component(b as u8).is_negative_at(0);
                 Complex64::new(if negative { -1.0 } else { 1.0 }, 0.0)
             });
         }

@@ -17,6 +17,9 @@
 //!   "complete": bool            whether all planned shots are in the file
 //!   "readout": text, "delta", "mixing_weight",
 //!   "sites": { "count", "kept",
+//!              "reduction": { "as_written", "merged", "deterministic",
+//!                             "unobservable", "log10_extent_as_written",
+//!                             "log10_extent_after_noise" },
 //!              "log10_extent_without_noise", "log10_extent", "extent" },
 //!   "draws": { "mean_attempts", "peak_active", "mean_terms_left" },
 //!   "settings": [[name, value], …],
@@ -31,7 +34,11 @@
 //! ```
 //!
 //! `shots_planned` is the share of this part in `shots_total`. `extent` is
-//! `null` where it leaves the range of a double. `outcomes` holds the most
+//! `null` where it leaves the range of a double. `reduction` says what came of
+//! the non-Clifford gates of the circuit: how many there are as written, how many
+//! sites merged into others, were found on an axis of known value, or cannot be
+//! seen in any recorded bit; the extent as written, and after noise was merged.
+//! It is `null` in files that do not tell. `outcomes` holds the most
 //! frequent words of a register of up to 64 bits, bit 0 on the right; it is
 //! `null` for wider registers and where too many different words turned up to
 //! count them. `corrected` is explained at [`estimate`]; it is `null` without
@@ -46,7 +53,11 @@ pub mod plan_text;
 mod summary;
 mod tally;
 mod text;
+mod verification;
 
 pub use estimate::{Estimate, Sample};
 pub use number::format_extent;
-pub use summary::{Draws, Outcome, Quantity, RegisterSummary, Sites, Summary};
+pub use summary::{Draws, Outcome, Quantity, Reduction, RegisterSummary, Sites, Summary};
+pub use verification::{
+    Corrected, Distances, Drawn, LIMIT, LawTest, Setting, Verification, allowed_bias,
+};

@@ -5,7 +5,7 @@ use serde::Serialize;
 use super::estimate::{Estimate, Sample, corrected};
 use super::tally::{Tally, Words};
 use crate::sampler::Family;
-use crate::store::{Header, Part, RegisterHeader, ShotFile, SiteRow, StoreError};
+use crate::store::{Header, Part, ReductionHeader, RegisterHeader, ShotFile, SiteRow, StoreError};
 
 /// Most outcomes of a register that are listed.
 pub(super) const MOST_OUTCOMES: usize = 8;
@@ -75,12 +75,32 @@ pub struct Sites {
     pub count: u64,
     /// Those that matter for the outcome.
     pub kept: u64,
+    /// What came of the non-Clifford gates before the run; absent where the file
+    /// does not tell.
+    pub reduction: Option<Reduction>,
     /// log₁₀ of the product of all extents as if there were no noise.
     pub log10_extent_without_noise: f64,
     /// log₁₀ ξ of the run.
     pub log10_extent: f64,
     /// ξ; absent where it is too large for a double.
     pub extent: Option<f64>,
+}
+
+/// What came of the non-Clifford gates of the circuit.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+pub struct Reduction {
+    /// Non-Clifford gates of the circuit as written.
+    pub as_written: u64,
+    /// Sites that merged into earlier ones, or became Clifford by that.
+    pub merged: u64,
+    /// Sites on an axis whose value is known, up to a sign.
+    pub deterministic: u64,
+    /// Sites that no recorded bit depends on.
+    pub unobservable: u64,
+    /// log₁₀ of the extent of the circuit as written, without noise.
+    pub log10_extent_as_written: f64,
+    /// log₁₀ of the extent once noise was merged, before sites were reduced.
+    pub log10_extent_after_noise: f64,
 }
 
 /// Averages of the per-shot diagnostics.
@@ -193,9 +213,24 @@ impl Sites {
         Sites {
             count: header.sites.len() as u64,
             kept: header.sites.iter().filter(|site| site.kept).count() as u64,
+            reduction: header.reduction.map(Reduction::from),
             log10_extent_without_noise: sum(|site| site.extent_without_noise),
             log10_extent: header.log_extent / std::f64::consts::LN_10,
             extent: extent.is_finite().then_some(extent),
+        }
+    }
+}
+
+impl From<ReductionHeader> for Reduction {
+    fn from(header: ReductionHeader) -> Self {
+        let log10 = |log: f64| log / std::f64::consts::LN_10;
+        Reduction {
+            as_written: header.sites_as_written,
+            merged: header.sites_merged,
+            deterministic: header.sites_deterministic,
+            unobservable: header.sites_unobservable,
+            log10_extent_as_written: log10(header.log_extent_as_written),
+            log10_extent_after_noise: log10(header.log_extent_after_noise),
         }
     }
 }

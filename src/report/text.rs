@@ -3,7 +3,7 @@
 use std::fmt::{self, Display, Formatter};
 
 use super::number::{format_estimate, format_extent, format_plain};
-use super::summary::{Outcome, Quantity, RegisterSummary, Summary};
+use super::summary::{Outcome, Quantity, Reduction, RegisterSummary, Summary};
 
 /// Most bits of a register that are listed one by one.
 const MOST_BITS: usize = 16;
@@ -80,6 +80,27 @@ impl Summary {
     }
 
     fn sites_line(&self) -> String {
+        if let Some(reduction) = &self.sites.reduction {
+            let Reduction {
+                as_written,
+                merged,
+                deterministic,
+                unobservable,
+                ..
+            } = reduction;
+            let gates = if *as_written == 1 { "gate" } else { "gates" };
+            let mut text = format!("{} of {as_written} non-Clifford {gates}", self.sites.kept);
+            for (count, what) in [
+                (merged, "merged"),
+                (deterministic, "deterministic"),
+                (unobservable, "unobservable"),
+            ] {
+                if *count > 0 {
+                    text += &format!(", {count} {what}");
+                }
+            }
+            return text;
+        }
         let count = self.sites.count;
         let places = if count == 1 { "place" } else { "places" };
         match count - self.sites.kept {
@@ -90,6 +111,14 @@ impl Summary {
 
     fn extent_line(&self) -> String {
         let extent = |log10: f64| format_extent(log10 * std::f64::consts::LN_10);
+        if let Some(reduction) = &self.sites.reduction {
+            return format!(
+                "{} as written, {} with noise merged, {} in this run",
+                extent(reduction.log10_extent_as_written),
+                extent(reduction.log10_extent_after_noise),
+                extent(self.sites.log10_extent)
+            );
+        }
         format!(
             "{} without noise, {} in this run",
             extent(self.sites.log10_extent_without_noise),

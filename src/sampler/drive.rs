@@ -77,7 +77,7 @@ impl<'p> Drive<'p> {
             progress,
             sink,
         };
-        self.with_probe(probe::Settings::single(), call)
+        self.with_walk(1, call)
     }
 
     fn sampler(&self, room: usize, keep_events: bool, drawing: Drawing) -> Sampler<'p> {
@@ -119,7 +119,7 @@ impl<'p> Drive<'p> {
         let (sites, slots) = (self.program.sites(), self.program.slots());
         // The caps of very many terms, which the sum of a few terms exceeds.
         let terms = if self.accept_all { 1 << 62 } else { terms };
-        let settings = walk::Settings::new(sites, terms);
+        let settings = walk::Settings::new(sites, terms, self.program.log_damping_trace());
         match slots {
             0..=64 => call.with(|| Walk::<1>::new(sites, slots, settings)),
             65..=128 => call.with(|| Walk::<2>::new(sites, slots, settings)),

@@ -7,6 +7,7 @@
 //! unnormalised density matrix for every value of the classical bits and acts
 //! on it with plain matrices.
 
+mod exact;
 mod random_circuits;
 mod reference;
 
@@ -17,12 +18,14 @@ use rand_pcg::Pcg64;
 use smallvec::smallvec;
 
 use crate::circuit::{Clifford, Pauli, Qubits};
+use crate::exact::Law;
+use crate::exact::fit::{Counts, fit};
 use crate::magic::mixing::{log_extent, mixing_weight};
 use crate::magic::{ScheduleOptions, Sparsifier, schedule};
 use crate::noise::{
     Instruction, Kind, NoisyCircuit, PauliChannel, PauliChoices, PauliWord, ReadoutFlip,
 };
-use crate::program::Program;
+use crate::program::{Program, reduce};
 use crate::readout::Register;
 use crate::readout::dense::Dense;
 use crate::readout::probe::{self, Probe, acceptance_cap};
@@ -43,10 +46,25 @@ fn sample<R: Register + Send>(
     seed: u64,
     make: impl Fn() -> R + Sync,
 ) -> BTreeMap<u32, f64> {
-    sample_counting(program, family, drawing, shots, seed, make, &mut 0)
+    sample_counting(
+        program,
+        family,
+        drawing,
+        shots,
+        seed,
+        make,
+        &mut Audit::default(),
+    )
 }
 
-/// Counts of recorded bits; adds the number of clipped shots to `clipped`.
+/// What the shots of a call had in common.
+#[derive(Default)]
+struct Audit {
+    clipped: u64,
+    attempts: u64,
+}
+
+/// Counts of recorded bits; adds to `audit`.
 fn sample_counting<R: Register + Send>(
     program: &Program,
     family: Family,
@@ -54,7 +72,7 @@ fn sample_counting<R: Register + Send>(
     shots: u64,
     seed: u64,
     make: impl Fn() -> R + Sync,
-    clipped: &mut u64,
+    audit: &mut Audit,
 ) -> BTreeMap<u32, f64> {
     let sparsifier = Sparsifier::new(program.sites());
     let recorded = (0..program.bits() as u32).collect();
@@ -67,11 +85,10 @@ fn sample_counting<R: Register + Send>(
         &Interrupt::new(),
         &mut Silent,
         |block: &Block| -> Result<(), SampleError> {
-            *clipped += block
-                .audit
-                .iter()
-                .filter(|shot| shot.register.clipped)
-                .count() as u64;
+            for shot in &block.audit {
+                audit.clipped += u64::from(shot.register.clipped);
+                audit.attempts += u64::from(shot.attempts);
+            }
             for row in &block.rows.bits {
                 *counts.entry(*row as u32).or_insert(0.0) += 1.0;
             }
@@ -82,45 +99,38 @@ fn sample_counting<R: Register + Send>(
     counts
 }
 
-/// Pearson's χ² of counts against a law, bins of fewer than 10 expected counts
-/// pooled, as standard deviations of the normal law by the Wilson–Hilferty
-/// approximation (Proc. Natl. Acad. Sci. USA 17, 684 (1931), from memory).
+/// Pearson's χ² of counts against a law as standard deviations of the normal law
+/// by the Wilson–Hilferty approximation (Proc. Natl. Acad. Sci. USA 17, 684
+/// (1931), from memory).
 fn deviation(counts: &BTreeMap<u32, f64>, law: &BTreeMap<u32, f64>) -> f64 {
-    let shots: f64 = counts.values().sum();
+    let mut drawn = Counts::default();
     for (bits, count) in counts {
-        let chance = law.get(bits).copied().unwrap_or(0.0);
-        assert!(
-            chance > 1e-12 || *count == 0.0,
-            "outcome {bits:b} of probability 0 was drawn"
-        );
+        drawn.add_many(&[u64::from(*bits)], *count as u64);
     }
-    let (mut statistic, mut bins) = (0.0, 0.0);
-    let (mut rest_count, mut rest_expected) = (0.0, 0.0);
-    for (bits, chance) in law {
-        let (count, expected) = (counts.get(bits).copied().unwrap_or(0.0), chance * shots);
-        if expected < 10.0 {
-            rest_count += count;
-            rest_expected += expected;
-        } else {
-            statistic += (count - expected).powi(2) / expected;
-            bins += 1.0;
-        }
-    }
-    if rest_expected > 10.0 {
-        statistic += (rest_count - rest_expected).powi(2) / rest_expected;
-        bins += 1.0;
-    }
-    let freedom: f64 = bins - 1.0;
-    if freedom < 1.0 {
+    let law = law
+        .iter()
+        .map(|(bits, chance)| (vec![u64::from(*bits)], *chance));
+    let found = fit(&drawn, &Law::new(law));
+    assert_eq!(found.impossible, 0, "outcomes of probability 0 were drawn");
+    if found.degrees_of_freedom == 0 {
         return 0.0;
     }
+    let freedom = found.degrees_of_freedom as f64;
     let spread = 2.0 / (9.0 * freedom);
-    ((statistic / freedom).cbrt() - (1.0 - spread)) / spread.sqrt()
+    ((found.statistic / freedom).cbrt() - (1.0 - spread)) / spread.sqrt()
 }
 
 fn compile(circuit: &NoisyCircuit, qubits: usize, absorb: bool) -> Program {
     let schedule = schedule(circuit, qubits, &ScheduleOptions { absorb });
     Program::compile(schedule, qubits, qubits + 2).expect("a small circuit compiles")
+}
+
+/// The same with its sites reduced first.
+fn compile_reduced(circuit: &NoisyCircuit, qubits: usize, absorb: bool) -> Program {
+    let schedule = schedule(circuit, qubits, &ScheduleOptions { absorb });
+    let recorded = vec![true; qubits + 2];
+    let reduced = reduce(schedule, qubits, &recorded).schedule;
+    Program::compile(reduced, qubits, qubits + 2).expect("a small circuit compiles")
 }
 
 /// Largest deviation that passes: one-sided false-alarm rate 3e-7 a test
@@ -143,7 +153,11 @@ fn dense_shots_follow_the_density_matrix() {
             magic: 6,
         };
         let circuit = random_circuit(&mut rng, qubits as u32, menu);
-        let program = compile(&circuit, qubits, round % 5 != 4);
+        let program = if round % 4 < 2 {
+            compile(&circuit, qubits, round % 5 != 4)
+        } else {
+            compile_reduced(&circuit, qubits, round % 5 != 4)
+        };
         let law = reference(&circuit, qubits);
         let active = program.peak_active().min(16);
         let counts = sample(
@@ -162,31 +176,42 @@ fn dense_shots_follow_the_density_matrix() {
     }
 }
 
-/// P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), P_comp from half a million
-/// companion shots.
+/// P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), P_comp exact, or from half a
+/// million companion shots where it differs from path to path.
 fn mixing_law(
     program: &Program,
     ideal: &BTreeMap<u32, f64>,
     terms: u64,
     seed: u64,
 ) -> BTreeMap<u32, f64> {
+    let recorded: Vec<u32> = (0..program.bits() as u32).collect();
+    if let Ok(exact) = crate::exact::companion(program, &recorded) {
+        let log_extent = log_extent(program.sites()) + exact.total().ln();
+        let weight = mixing_weight(log_extent, terms);
+        let exact = exact.normalised();
+        let mixed = |bits: u32| exact.weight(&[u64::from(bits)]);
+        return ideal
+            .iter()
+            .map(|(&bits, &chance)| (bits, (1.0 - weight) * chance + weight * mixed(bits)))
+            .filter(|entry| entry.1 > 1e-9)
+            .collect();
+    }
     let shots = 500_000;
-    let companion = sample(
+    let settings = walk::Settings::new(program.sites(), 1, program.log_damping_trace());
+    let mut audit = Audit::default();
+    let companion = sample_counting(
         program,
         Family::Companion,
         Drawing::Companion,
         shots,
         seed,
-        || {
-            Probe::<1>::new(
-                program.sites(),
-                program.slots(),
-                probe::Settings::single(),
-                &NEVER,
-            )
-        },
+        || Walk::<1>::new(program.sites(), program.slots(), settings),
+        &mut audit,
     );
-    let weight = mixing_weight(log_extent(program.sites()), terms);
+    // [(k − 1)·P + ξ·t·P_comp]/(k − 1 + ξ·t), t the trace of the companion.
+    let trace = settings.trace(shots, audit.attempts);
+    let log_extent = log_extent(program.sites()) + trace.ln();
+    let weight = mixing_weight(log_extent, terms);
     let mixed = |bits: u32| companion.get(&bits).copied().unwrap_or(0.0) / shots as f64;
     ideal
         .iter()
@@ -197,30 +222,34 @@ fn mixing_law(
 
 /// The basis walk follows the mixing law exactly, whatever comes between its
 /// sites: measurements, feedback, resets, conditional gates, rotations by any
-/// angle. Small k on purpose, where the companion's share is large. 40,000
+/// angle, amplitude damping of entangled qubits. Small k on purpose, where the companion's share is large. 40,000
 /// shots of each circuit.
 #[test]
 fn walk_shots_follow_the_mixing_law() {
     let mut rng = Pcg64::seed_from_u64(4);
-    let (mut tested, mut clipped) = (0, 0);
+    let (mut tested, mut audit) = (0, Audit::default());
     for round in 0..80 {
         let qubits = 2 + round % 3;
         let menu = Menu {
-            damping: false,
+            damping: round % 4 < 2,
             generic_angles: round % 2 == 0,
             branches: round % 3 == 0,
             instructions: 14 + 4 * qubits,
             magic: 5,
         };
         let circuit = random_circuit(&mut rng, qubits as u32, menu);
-        let program = compile(&circuit, qubits, round % 5 != 4);
+        let program = if round % 4 < 2 {
+            compile(&circuit, qubits, round % 5 != 4)
+        } else {
+            compile_reduced(&circuit, qubits, round % 5 != 4)
+        };
         let extent = log_extent(program.sites());
         if extent < 0.05 {
             continue;
         }
         tested += 1;
         let terms = [2, 3, 5, 8][round % 4];
-        let settings = walk::Settings::new(program.sites(), terms);
+        let settings = walk::Settings::new(program.sites(), terms, program.log_damping_trace());
         let (slots, seed) = (program.slots(), round as u64);
         let drawing = Drawing::Terms(terms as usize);
         let shots = 40_000;
@@ -231,7 +260,7 @@ fn walk_shots_follow_the_mixing_law() {
             shots,
             seed,
             || Walk::<1>::new(program.sites(), slots, settings),
-            &mut clipped,
+            &mut audit,
         );
         let law = mixing_law(&program, &reference(&circuit, qubits), terms, seed);
         let found = deviation(&counts, &law);
@@ -242,7 +271,11 @@ fn walk_shots_follow_the_mixing_law() {
     }
     assert!(tested > 45, "{tested} circuits had magic");
     // Caps are for about one in a million starts, one in a thousand ends.
-    assert!(clipped < tested * 40, "{clipped} shots were clipped");
+    assert!(
+        audit.clipped < tested * 40,
+        "{} shots were clipped",
+        audit.clipped
+    );
 }
 
 /// Terms follow the mixing law P_out = [(k − 1)·P + ξ·P_comp]/(k − 1 + ξ), with
@@ -392,6 +425,52 @@ fn mean_norm_is_exact_on_thirty_sites() {
     );
 }
 
+/// A Pauli that comes with an outcome before a qubit was fresh must not reach
+/// the state the qubit takes then: resetting qubit 1 and then qubit 0 leaves
+/// |00⟩ whatever the first reset read, t and t† cancel on |+⟩ next to a |0⟩, and
+/// the qubit always reads 0. On the schedule as it is: a reduced one has no site
+/// left.
+#[test]
+fn what_a_reset_read_does_not_reach_the_state_prepared_next() {
+    let gates =
+        |gates: &[Clifford]| -> Vec<Kind> { gates.iter().cloned().map(Kind::Clifford).collect() };
+    let turn = |sign: f64| Kind::Rotation {
+        axis: smallvec![(1, Pauli::Z)],
+        angle: sign * std::f64::consts::FRAC_PI_4,
+    };
+    let kinds = [
+        gates(&[Clifford::H(0), Clifford::Cz(0, 1)]),
+        vec![Kind::Reset { qubit: 1 }, Kind::Reset { qubit: 0 }],
+        gates(&[Clifford::H(1)]),
+        vec![turn(1.0)],
+        gates(&[Clifford::Cx(0, 1)]),
+        vec![turn(-1.0)],
+        gates(&[Clifford::H(1)]),
+        vec![Kind::Measure {
+            qubit: 1,
+            bit: Some(1),
+            flip: ReadoutFlip::default(),
+        }],
+    ];
+    let instructions = kinds.into_iter().flatten().map(|kind| Instruction {
+        kind,
+        condition: None,
+        operation: 0,
+    });
+    let circuit = NoisyCircuit {
+        instructions: instructions.collect(),
+        warnings: Vec::new(),
+    };
+    let program = compile(&circuit, 2, true);
+    assert_eq!(program.sites().len(), 2);
+    let active = program.peak_active();
+    let counts = sample(&program, Family::Shots, Drawing::Members, 200, 8, || {
+        Dense::new(program.sites(), active)
+    });
+    assert_eq!(counts, BTreeMap::from([(0, 200.0)]));
+    assert_eq!(compile_reduced(&circuit, 2, true).sites().len(), 0);
+}
+
 /// Paths that differ in what they execute or measure must keep their weights:
 /// a coin decides whether a magic qubit is measured, and whether a CCZ acts.
 /// Both probe and walk, 60,000 shots: a shot kept too often on one path by 1 %
@@ -456,7 +535,7 @@ fn conditional_measurements_and_gates_keep_the_weight_of_paths() {
             deviation(&probed, &law) < LIMIT,
             "probe: {probed:?} for {law:?}"
         );
-        let settings = walk::Settings::new(program.sites(), terms);
+        let settings = walk::Settings::new(program.sites(), terms, program.log_damping_trace());
         let walked = sample(&program, Family::Shots, drawing, 60_000, 6, || {
             Walk::<1>::new(program.sites(), slots, settings)
         });

@@ -39,6 +39,9 @@ pub struct Header {
     /// sites that do not matter. Stored as `log_extent`, and ξ itself as
     /// `extent` (infinite where it leaves the range of a double).
     pub log_extent: f64,
+    /// What came of the non-Clifford gates before the run; absent where it was
+    /// not told.
+    pub reduction: Option<ReductionHeader>,
     /// Number of stabiliser terms k; absent for the dense read-out.
     pub terms: Option<u64>,
     /// λ = ξ/(k − 1 + ξ), 0 for the dense read-out; see
@@ -58,6 +61,26 @@ pub struct Header {
     /// The places where noise may act; stored as `/faults/locations` where
     /// faults are recorded, and nowhere else.
     pub locations: Vec<LocationRow>,
+}
+
+/// What came of the non-Clifford gates before the run. Every field is stored
+/// under its own name as an attribute of the root group.
+#[derive(Debug, Clone, Copy, PartialEq, Default)]
+pub struct ReductionHeader {
+    /// Natural logarithm of the extent of the circuit as written: every
+    /// non-Clifford gate by itself, without noise.
+    pub log_extent_as_written: f64,
+    /// The same after neighbouring gates and noise were merged, before sites were
+    /// reduced further.
+    pub log_extent_after_noise: f64,
+    /// Non-Clifford gates of the circuit as written.
+    pub sites_as_written: u64,
+    /// Sites that merged into earlier ones, or became Clifford by that.
+    pub sites_merged: u64,
+    /// Sites on an axis whose value is known, up to a sign.
+    pub sites_deterministic: u64,
+    /// Sites that no recorded bit depends on.
+    pub sites_unobservable: u64,
 }
 
 /// Part `index` of `count` of a run, from 1.

@@ -36,6 +36,8 @@ mod writer;
 
 pub use block::AuditBlock;
 pub use error::StoreError;
-pub use header::{FORMAT, FORMAT_VERSION, Header, LocationRow, Part, RegisterHeader, SiteRow};
+pub use header::{
+    FORMAT, FORMAT_VERSION, Header, LocationRow, Part, ReductionHeader, RegisterHeader, SiteRow,
+};
 pub use reader::{Blocks, ShotFile};
 pub use writer::{Finished, Writer, WriterOptions};

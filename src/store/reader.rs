@@ -11,7 +11,7 @@ use ndarray::{Array1, Array2, s};
 
 use super::layout::{self, LocationRecord, SiteRecord, plain};
 use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header};
-use super::{Part, RegisterHeader, StoreError, block};
+use super::{Part, ReductionHeader, RegisterHeader, StoreError, block};
 use crate::sampler::{Family, FaultEvent, Rows};
 
 /// Most bits a register may have; far more than a circuit can declare.
@@ -329,6 +329,7 @@ impl Source<'_> {
             delta: self.optional("delta")?,
             readout: self.text("readout")?,
             log_extent: self.attribute(self.file, "log_extent")?,
+            reduction: self.reduction()?,
             terms: self.optional("terms")?,
             mixing_weight: self.attribute(self.file, "mixing_weight")?,
             shots_total: self.attribute(self.file, "shots_total")?,
@@ -338,6 +339,20 @@ impl Source<'_> {
             sites: sites.iter().map(SiteRecord::row).collect(),
             locations: locations.iter().map(LocationRecord::row).collect(),
         })
+    }
+
+    fn reduction(&self) -> Result<Option<ReductionHeader>, StoreError> {
+        let Some(sites_as_written) = self.optional("sites_as_written")? else {
+            return Ok(None);
+        };
+        Ok(Some(ReductionHeader {
+            log_extent_as_written: self.attribute(self.file, "log_extent_as_written")?,
+            log_extent_after_noise: self.attribute(self.file, "log_extent_after_noise")?,
+            sites_as_written,
+            sites_merged: self.attribute(self.file, "sites_merged")?,
+            sites_deterministic: self.attribute(self.file, "sites_deterministic")?,
+            sites_unobservable: self.attribute(self.file, "sites_unobservable")?,
+        }))
     }
 
     fn part(&self) -> Result<Part, StoreError> {

@@ -16,7 +16,7 @@ use super::StoreError;
 use super::layout::{self, LocationRecord, SiteRecord, text};
 use super::tables::{Column, Table, new_group};
 use super::temporary::Temporary;
-use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header};
+use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header, ReductionHeader};
 use crate::sampler::{FaultEvent, Rows};
 
 /// What a [`Writer`] shall do besides writing shots.
@@ -323,6 +323,22 @@ fn write_attributes(file: &File, header: &Header, prepared: &Prepared) -> hdf5::
     number(file, "log_extent", header.log_extent)?;
     number(file, "extent", header.log_extent.exp())?;
     number(file, "mixing_weight", header.mixing_weight)?;
+    if let Some(reduction) = &header.reduction {
+        let ReductionHeader {
+            log_extent_as_written,
+            log_extent_after_noise,
+            sites_as_written,
+            sites_merged,
+            sites_deterministic,
+            sites_unobservable,
+        } = *reduction;
+        number(file, "log_extent_as_written", log_extent_as_written)?;
+        number(file, "log_extent_after_noise", log_extent_after_noise)?;
+        number(file, "sites_as_written", sites_as_written)?;
+        number(file, "sites_merged", sites_merged)?;
+        number(file, "sites_deterministic", sites_deterministic)?;
+        number(file, "sites_unobservable", sites_unobservable)?;
+    }
     if let Some(qubits) = header.qubits {
         number(file, "qubits", qubits)?;
     }

@@ -148,6 +148,12 @@ def hidden_shift(half, shift, cubic):
     given as index triples; the outcome is the shift for certain.
     arXiv:0811.3208; Phys. Rev. Lett. 116, 250501 (2016), from memory."""
     circuit = Circuit()
+    fill_hidden_shift(circuit, half, shift, cubic, circuit.gate)
+    return circuit, certain(shift, 2 * half)
+
+
+def fill_hidden_shift(circuit, half, shift, cubic, three_qubit):
+    """The gates of the hidden shift; `three_qubit(name, *qubits)` adds a ccz."""
     q = circuit.qubits("q", 2 * half)
     c = circuit.bits("c", 2 * half)
     shifted = [i for i in range(2 * half) if shift >> i & 1]
@@ -165,16 +171,15 @@ def hidden_shift(half, shift, cubic):
         circuit.gate("x", q[i])
     inner_product()
     for triple in cubic:
-        circuit.gate("ccz", *(q[i] for i in triple))
+        three_qubit("ccz", *(q[i] for i in triple))
     for i in shifted:
         circuit.gate("x", q[i])
     everywhere("h")
     inner_product()
     for triple in cubic:
-        circuit.gate("ccz", *(q[half + i] for i in triple))
+        three_qubit("ccz", *(q[half + i] for i in triple))
     everywhere("h")
     circuit.measure_all(q, c)
-    return circuit, certain(shift, 2 * half)
 
 
 def one_qubit_decay(p, repeats, basis):

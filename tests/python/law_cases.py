@@ -1,6 +1,9 @@
-"""The circuits on which the mixing law is tested, one function each.
+"""Circuits on which the mixing law is tested, one function each: t-like places,
+prepared states, ccz, Pauli axes, noise about them. More are in
+law_cases_rotations.py, law_cases_adaptive.py and law_cases_damping.py;
+law_catalogue.py lists all.
 
-Each takes a `LawCircuit` (ideal or companion meaning) and fills it.
+Each function takes a `LawCircuit` (ideal or companion meaning) and fills it.
 """
 
 import numpy as np
@@ -244,22 +247,47 @@ def state_after_a_measurement(c):
     c.measure(q[1], m[1])
 
 
-# name: (function, numbers of terms to test)
-CASES = {
-    "one t": (one_t, (2, 5)),
-    "one rotation": (one_rotation, (2, 5)),
-    "negative rotation": (negative_rotation, (3,)),
-    "dephased t": (dephased_t, (2, 4)),
-    "face states": (face_states, (3,)),
-    "noisy face states": (noisy_face_states, (2,)),
-    "generic states": (generic_states, (2, 4)),
-    "one ccz": (one_ccz, (2, 6)),
-    "toffoli and swap": (toffoli_and_swap, (3,)),
-    "entangled t": (entangled_t, (2, 5)),
-    "depolarized t": (depolarized_t, (2,)),
-    "pauli axes": (pauli_axes, (3, 8)),
-    "noise in between": (noise_in_between, (2,)),
-    "noise that reaches a site": (noise_that_reaches_a_site, (2,)),
-    "state after a measurement": (state_after_a_measurement, (10,)),
-    "injection": (injection, (3,)),
-}
+def two_ccz(c):
+    """Two ccz that share a qubit, behind an entangling layer."""
+    q = c.qubits("q", 5)
+    m = c.bits("m", 5)
+    spread(c, q)
+    c.three_qubit("ccz", q[0], q[1], q[2])
+    c.gate("h", q[2])
+    c.gate("cx", q[3], q[2])
+    c.three_qubit("ccz", q[2], q[3], q[4])
+    spread(c, q)
+    c.measure_all(q, m)
+
+
+def ccz_among_t(c):
+    """ccz, t and a face-type state in one circuit."""
+    q = c.qubits("q", 4)
+    m = c.bits("m", 4)
+    c.prepare(q[3], ("ry", (FACE_ANGLE,), []), ("rz", (QUARTER,), []))
+    spread(c, q[:3])
+    c.three_qubit("ccz", *q[:3])
+    c.gate("h", q[1])
+    c.gate("cx", q[1], q[3])
+    c.rotation("t", q[3])
+    c.gate("h", q[3])
+    c.rotation("tdg", q[1], noise=[dephasing(0.04)], dephasing=0.04)
+    spread(c, q[:3])
+    c.measure_all(q, m)
+
+
+def ghz_of_t(c):
+    """Parity of a GHZ state with four dephased t."""
+    q = c.qubits("q", 4)
+    m = c.bits("m", 4)
+    c.gate("h", q[0])
+    for a, b in zip(q, q[1:]):
+        c.gate("cx", a, b)
+    # Each t about an axis of its own, so that no two make one gate.
+    for i, qubit in enumerate(q):
+        c.rotation("t", qubit, noise=[dephasing(0.02)], dephasing=0.02)
+        if i < 3:
+            c.gate("h", qubit)
+            c.gate("cx", qubit, q[i + 1])
+    spread(c, q)
+    c.measure_all(q, m)

@@ -18,6 +18,7 @@ import numpy as np
 
 import gate_matrices
 from circuit_builder import Circuit, Statement, number_value
+from noise_channels import amplitude_damping, damping_kraus, relaxation
 from reference import bloch_vector
 
 # Which of Z1 Z2 Z3 CZ12 CZ23 CZ13 make up each of the eight diagonals, and the
@@ -105,6 +106,35 @@ class LawCircuit(Circuit):
             for p, turns in mixture
         ])
 
+    def merged_rotation(self, name, qubit, angle, noise, whole):
+        """A rotation whose noise makes it one by another angle, `whole`."""
+        first = len(self._block)
+        self.gate(name, qubit, parameters=(angle,), noise=noise)
+        extent, mixture = rotation_site(whole, 0.0)
+        self.extent *= extent
+        self._replace_last(first, [
+            np.sqrt(p) * gate_matrices.rotation(AXES[name], turns * np.pi / 2)
+            for p, turns in mixture
+        ])
+
+    def damp(self, qubit, gamma):
+        """Amplitude damping of an entangled qubit; its companion is not normalised."""
+        first = len(self._block)
+        self.gate("id", qubit, noise=[amplitude_damping(gamma)])
+        self._replace_last(first, damping_companion(gamma))
+
+    def relax(self, qubit, t1, t2, time):
+        """Relaxation of an entangled qubit, times in µs: damping with 1 − e^{−t/t1},
+        then dephasing that leaves coherence e^{−t/t2}. Textbook."""
+        first = len(self._block)
+        self.gate("id", qubit, noise=[relaxation(f"{t1}us", f"{t2}us", f"{time}us")])
+        flip = (1 - np.exp(-time / t2 + time / (2 * t1))) / 2
+        self._replace_last(first, [
+            np.sqrt(weight) * pauli @ k
+            for weight, pauli in ((1 - flip, gate_matrices.I), (flip, gate_matrices.Z))
+            for k in damping_companion(1 - np.exp(-time / t1))
+        ])
+
     def three_qubit(self, name, *qubits):
         """ccz, ccx or cswap as one site."""
         first = len(self._block)
@@ -140,6 +170,13 @@ class LawCircuit(Circuit):
         ])
 
 
+def damping_companion(gamma):
+    """Operators of sρ + (1−s)·P0ρP0 + K1ρK1†, s = √(1−γ); see law_cases_damping.py."""
+    s = np.sqrt(1 - gamma)
+    return [np.sqrt(s) * np.eye(2), np.sqrt(1 - s) * np.diag([1.0, 0.0]),
+            damping_kraus(gamma)[1]]
+
+
 def turned(unitary, vector):
     """Bloch vector after a unitary."""
     paulis = [gate_matrices.PAULI[letter] for letter in "XYZ"]
@@ -147,6 +184,6 @@ def turned(unitary, vector):
     return np.array([np.trace(density @ p).real / 2 for p in paulis])
 
 
-def mixing_weight(extent, terms):
-    """λ = ξ/(k − 1 + ξ)."""
-    return extent / (terms - 1 + extent)
+def mixing_weight(extent, terms, trace=1.0):
+    """λ = ξt/(k − 1 + ξt), t the trace of the companion's state."""
+    return extent * trace / (terms - 1 + extent * trace)

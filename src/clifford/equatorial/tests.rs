@@ -5,6 +5,7 @@ use rand::{RngExt, SeedableRng};
 use rand_pcg::Pcg64Mcg;
 
 use super::*;
+use crate::clifford::kernels::Level;
 use crate::clifford::terms::tests::{Dense, Pair, quarter};
 
 /// ⟨θ|Π_m v⟩ by the definition of |θ⟩.
@@ -232,4 +233,27 @@ fn an_equatorial_state_overlaps_itself() {
     run::<1>(1);
     run::<2>(2);
     run::<4>(3);
+}
+
+/// The same sums, bit for bit, whatever the instructions.
+#[test]
+fn levels_agree_bit_for_bit() {
+    let mut rng = Pcg64Mcg::seed_from_u64(11);
+    for _ in 0..40 {
+        let mut pair = Pair::<1>::new(6, 9, 20, &mut rng);
+        for _ in 0..30 {
+            pair.step(&mut rng);
+        }
+        let mut form = EquatorialForm::<1>::new(9);
+        form.randomise(&[0x1ff], &mut rng);
+        let sums = |level| {
+            let mut terms = pair.terms.clone();
+            terms.set_level(level);
+            terms
+                .overlaps(&form, 3)
+                .map(|sum| (sum.re.to_bits(), sum.im.to_bits()))
+        };
+        let plain = sums(Level::PLAIN);
+        assert!(Level::all().into_iter().all(|level| sums(level) == plain));
+    }
 }

@@ -4,8 +4,10 @@
 
 pub(crate) mod bits;
 pub(crate) mod matrix;
+mod operation;
 pub(crate) mod phase;
 mod quadratic;
+mod sweep;
 pub(crate) mod term;
 
 #[cfg(test)]
@@ -13,8 +15,10 @@ pub(crate) mod tests;
 
 use num_complex::Complex64;
 
+use super::kernels::Level;
 use crate::magic::Stabiliser;
 
+pub use operation::{Candidate, Chosen, Operation, Planes, Release, Resolved, Sums, Turn};
 pub use quadratic::QuadraticPhase;
 
 use bits::Bits;
@@ -45,6 +49,7 @@ pub struct Terms<const W: usize> {
     /// A matrix of `stride` rows a term.
     rows: Vec<u64>,
     stride: usize,
+    level: Level,
 }
 
 impl<const W: usize> Terms<W> {
@@ -54,6 +59,11 @@ impl<const W: usize> Terms<W> {
     ///
     /// If there are more than 64·W slots.
     pub fn new(slots: usize) -> Self {
+        Self::with_level(slots, Level::widest())
+    }
+
+    /// The same, with the instructions of a level.
+    pub fn with_level(slots: usize, level: Level) -> Self {
         assert!(
             slots <= 64 * W,
             "{slots} slots do not fit into {W} words of 64"
@@ -63,6 +73,7 @@ impl<const W: usize> Terms<W> {
             heads: Vec::new(),
             rows: Vec::new(),
             stride: stride_of(slots),
+            level,
         }
     }
 
@@ -87,9 +98,43 @@ impl<const W: usize> Terms<W> {
         self.rows.resize(self.words() * weights.len(), 0);
     }
 
+    /// The same with terms that have a phase e^{iπ/4·eighths} and a number of
+    /// factors 0 that wait, given by label.
+    ///
+    /// # Panics
+    ///
+    /// If there are more than 2³² terms.
+    pub fn reset_with(
+        &mut self,
+        terms: usize,
+        mut choose: impl FnMut(usize) -> (Complex64, u8, u16),
+    ) {
+        assert!(u32::try_from(terms).is_ok(), "more than 2^32 - 1 terms");
+        self.heads.clear();
+        self.heads.extend((0..terms).map(|label| {
+            let (weight, eighths, blocked) = choose(label);
+            let mut head = Head::new(weight, label as u32);
+            head.factor.turn_eighths(eighths);
+            head.blocked = blocked;
+            head
+        }));
+        self.rows.resize(self.words() * terms, 0);
+    }
+
     /// The capacity in slots.
     pub fn slots(&self) -> usize {
         self.slots
+    }
+
+    /// The instructions its passes use.
+    pub fn level(&self) -> Level {
+        self.level
+    }
+
+    /// Changes them.
+    #[cfg(test)]
+    pub(crate) fn set_level(&mut self, level: Level) {
+        self.level = level;
     }
 
     /// How many terms are left.

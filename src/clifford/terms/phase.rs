@@ -112,6 +112,12 @@ impl Factor {
         self
     }
 
+    /// × number.
+    #[inline(always)]
+    pub(crate) fn multiply(&mut self, number: Complex64) {
+        self.weight *= number;
+    }
+
     /// × number; the powers of √2 are folded in, so that a caller who
     /// normalises now and then meets no overflow.
     pub(crate) fn scale(&mut self, number: Complex64) {
@@ -140,8 +146,16 @@ fn root_two_power(n: i32) -> f64 {
     if (-1022..=1023).contains(&power) {
         odd * f64::from_bits(((power + 1023) as u64) << 52)
     } else {
-        odd * 2f64.powi(power)
+        odd * out_of_range(power)
     }
+}
+
+/// 2^power where that is no normal number. Apart, for a call of `powi` would be made
+/// in advance even where it is not needed.
+#[cold]
+#[inline(never)]
+fn out_of_range(power: i32) -> f64 {
+    2f64.powi(power)
 }
 
 /// e^{iπ/4·n}, n from 0 to 7.

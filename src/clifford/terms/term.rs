@@ -10,7 +10,7 @@ use super::quadratic::{PAIRS, QuadraticPhase};
 use crate::magic::Stabiliser;
 
 /// Everything of a term but its rows.
-#[derive(Debug, Clone, Copy)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub(crate) struct Head<const W: usize> {
     /// V, the slots whose basis bits are the parameters.
     pub(crate) pivots: Bits<W>,
@@ -22,6 +22,10 @@ pub(crate) struct Head<const W: usize> {
     pub(crate) factor: Factor,
     /// Which original term this is.
     pub(crate) label: u32,
+    /// How many factors 0 wait for their slot.
+    pub(crate) blocked: u16,
+    /// Of the candidate of the last sweep.
+    pub(crate) gathered: Gathered<W>,
 }
 
 impl<const W: usize> Head<W> {
@@ -33,6 +37,8 @@ impl<const W: usize> Head<W> {
             diagonal: Diagonal::ZERO,
             factor: Factor::new(weight),
             label,
+            blocked: 0,
+            gathered: Gathered::default(),
         }
     }
 
@@ -66,6 +72,15 @@ impl<const W: usize> Head<W> {
     }
 }
 
+/// What X^x does to a term: with a = x on the pivots, Σ_{p∈a} R_p and B(a).
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(crate) struct Gathered<const W: usize> {
+    /// Σ_{p∈a} R_p.
+    pub(crate) sum: Bits<W>,
+    /// B(a) mod 4.
+    pub(crate) quarters: u8,
+}
+
 /// A term being changed: head and rows. Only rows of pivots are ever read.
 pub(crate) struct Term<'a, const W: usize> {
     /// The words.
@@ -95,10 +110,41 @@ impl<const W: usize> Term<'_, W> {
     /// (1 + i^phase·X^x Z^z)/√2. Returns whether anything is left.
     #[inline(always)]
     pub(crate) fn primitive(&mut self, phase: u8, x: Bits<W>, z: Bits<W>) -> bool {
+        let gathered = self.gather(x);
+        self.primitive_gathered(phase, x, z, gathered)
+    }
+
+    /// What the rows say of X^x.
+    #[inline(always)]
+    pub(crate) fn gather(&self, x: Bits<W>) -> Gathered<W> {
+        let (sum, quarters) = self.head.combine(&self.rows, x & self.head.pivots);
+        Gathered { sum, quarters }
+    }
+
+    /// X^x; afterwards `gathered` is that of the new state.
+    #[inline(always)]
+    pub(crate) fn shift_by(&mut self, x: Bits<W>, gathered: &mut Gathered<W>) {
+        let head = &mut *self.head;
+        // B(y ⊕ a) = B(y) + B(a) + 2·y·B̂a, and B(a) becomes −B(a).
+        head.shift ^= (gathered.sum ^ x) & !head.pivots;
+        head.diagonal.high ^= gathered.sum & head.pivots;
+        head.factor.turn_quarters(gathered.quarters);
+        gathered.quarters = gathered.quarters.wrapping_neg() & 3;
+    }
+
+    /// The same as [`Self::primitive`], the rows in x summed up already.
+    #[inline(always)]
+    pub(crate) fn primitive_gathered(
+        &mut self,
+        phase: u8,
+        x: Bits<W>,
+        z: Bits<W>,
+        gathered: Gathered<W>,
+    ) -> bool {
         let head = &*self.head;
         let pivots = head.pivots;
         let a = x & pivots;
-        let (sum, quarters) = head.combine(&self.rows, a);
+        let Gathered { sum, quarters } = gathered;
 
         let mut slope = z & pivots;
         let outside = z & !pivots;
@@ -275,13 +321,20 @@ impl<const W: usize> Term<'_, W> {
         head.diagonal.high ^= row & head.pivots;
     }
 
+    /// Projects on Z_slot = (−1)^value; the slot stays in use. Returns whether
+    /// anything is left.
+    #[inline(always)]
+    pub(crate) fn project(&mut self, slot: usize, value: bool) -> bool {
+        let lambda = self.head.dependence(&self.rows, slot);
+        let sigma = self.head.shift.has(slot) ^ value;
+        self.restrict(lambda, sigma)
+    }
+
     /// Projects on Z_slot = (−1)^value and leaves the slot idle. Returns
     /// whether anything is left.
     #[inline(always)]
     pub(crate) fn measured(&mut self, slot: usize, value: bool) -> bool {
-        let lambda = self.head.dependence(&self.rows, slot);
-        let sigma = self.head.shift.has(slot) ^ value;
-        let kept = self.restrict(lambda, sigma);
+        let kept = self.project(slot, value);
         self.head.shift &= !Bits::one(slot);
         kept
     }

@@ -138,7 +138,7 @@ impl Writer {
     }
 
     fn prepared(&mut self, prepared: Prepared) {
-        let state = PreparedSite::new(prepared.bloch);
+        let state = PreparedSite::with_ideal(prepared.bloch, prepared.ideal);
         let qubit = prepared.qubit;
         let site = self.site(Site {
             extent_without_noise: extent::of_state(prepared.ideal),

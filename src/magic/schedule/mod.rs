@@ -22,7 +22,7 @@ mod merge;
 mod prepare;
 mod rotations;
 #[cfg(test)]
-mod tests;
+pub(crate) mod tests;
 mod timeline;
 mod unobserved;
 mod walk;
@@ -30,6 +30,7 @@ mod walk;
 use crate::noise::NoisyCircuit;
 
 use super::Schedule;
+pub(super) use rotations::quarters_and_rest;
 use timeline::Timeline;
 
 /// What [`schedule()`] may do.

@@ -78,7 +78,7 @@ pub(super) fn fold(timeline: &mut Timeline) {
 
 /// The angle as quarter turns modulo a whole turn (0 to 3) and a rest in
 /// [0, π/2), 0 where it is within the tolerance of a multiple.
-fn quarters_and_rest(angle: f64) -> (u8, f64) {
+pub(in crate::magic) fn quarters_and_rest(angle: f64) -> (u8, f64) {
     // The nearest multiple first, so that a rest at rounding level is seen as such.
     let turns = angle % TAU / FRAC_PI_2;
     let nearest = turns.round();

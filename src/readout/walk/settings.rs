@@ -40,11 +40,18 @@ pub struct Settings {
     pub(super) start_cap: f64,
     /// Largest G at the end.
     pub(super) end_cap: f64,
+    /// Mean of G without damping.
+    growth: f64,
+    /// Modulus of every term's weight: √ξ/k, ξ that of the sites with input bits.
+    pub(super) modulus: f64,
+    /// Whether there are prepared qubits.
+    pub(super) prepared: bool,
 }
 
 impl Settings {
-    /// Settings for these sites and so many terms.
-    pub fn new(sites: &[Site], terms: u64) -> Self {
+    /// Settings for these sites and so many terms. `log_trace` bounds the
+    /// logarithm of the companion's trace, 0 where no entangled qubit is damped.
+    pub fn new(sites: &[Site], terms: u64, log_trace: f64) -> Self {
         let log_extent = |wanted: &dyn Fn(Meeting) -> bool| -> f64 {
             sites
                 .iter()
@@ -53,7 +60,7 @@ impl Settings {
                 .sum()
         };
         let input = log_extent(&|meeting| meeting == Meeting::Input);
-        let all = log_extent(&|_| true);
+        let all = log_extent(&|_| true) + log_trace;
         let weight = mixing_weight(input, terms);
         let mean = mean_norm(input, terms);
         let tail = if weight < 1.0 {
@@ -64,16 +71,19 @@ impl Settings {
         };
         // |Ω(z)|² ≤ ξ·(1/k)Σ|φ_j(z)|² always; that mean is q itself where all
         // bits are uniform, and at most q/λ with prepared qubits.
-        let uniform = !sites
+        let prepared = sites
             .iter()
             .any(|site| matches!(site.kind, SiteKind::Prepared(_)));
-        let share = if uniform { 1.0 } else { weight };
+        let share = if prepared { weight } else { 1.0 };
         let bound = (input - mean.ln()).exp() / share;
         let relative = tail.min(bound).max(1.0);
         // G is a product of means, far less spread than one amplitude: room for
         // three times its mean excess and more where λ is large.
         let growth = mean_norm(all, terms) / mean;
-        let spread = if all > input {
+        let spread = if terms == 1 {
+            // R = 1 everywhere: G is at most the bound of its mean.
+            1.0
+        } else if all > input {
             let weight = mixing_weight(all, terms).min(1.0 - 1e-12);
             1.0 + 3.0 * weight / (1.0 - weight)
         } else {
@@ -83,6 +93,15 @@ impl Settings {
             mixing_weight: weight,
             start_cap: mean * relative,
             end_cap: growth * spread,
+            growth: growth / log_trace.exp(),
+            modulus: (0.5 * input).exp() / terms as f64,
+            prepared,
         }
+    }
+    /// The companion's trace, from how many of the attempts at a single term were
+    /// kept: every one is kept with the chance G/cap.
+    pub fn trace(&self, shots: u64, attempts: u64) -> f64 {
+        let kept = shots as f64 / attempts.max(1) as f64;
+        kept * self.end_cap / self.growth
     }
 }

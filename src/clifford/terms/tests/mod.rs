@@ -7,3 +7,4 @@ mod sequences;
 
 pub(crate) use dense::{Dense, quarter};
 pub(crate) use sequences::Pair;
+mod sweep;

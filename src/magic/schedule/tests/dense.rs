@@ -7,7 +7,7 @@ use num_complex::Complex64;
 
 use crate::circuit::{BitExpression, Clifford, Pauli, PauliProduct};
 use crate::magic::{self, Schedule, SiteKind};
-use crate::noise::{self, NoisyCircuit, PauliChannel, PauliChoices, ReadoutFlip};
+use crate::noise::{self, NoisyCircuit, PauliChannel, PauliChoices, PauliWord, ReadoutFlip};
 
 fn c(re: f64, im: f64) -> Complex64 {
     Complex64::new(re, im)
@@ -15,7 +15,7 @@ fn c(re: f64, im: f64) -> Complex64 {
 
 /// A square matrix, row by row.
 #[derive(Clone, PartialEq)]
-pub(super) struct Matrix {
+pub(crate) struct Matrix {
     size: usize,
     entries: Vec<Complex64>,
 }
@@ -178,7 +178,7 @@ fn clifford(qubits: usize, gate: &Clifford) -> Matrix {
 }
 
 /// The state: for every value of the bits, the matrix of that case.
-pub(super) struct State {
+pub(crate) struct State {
     qubits: usize,
     pub(super) cases: BTreeMap<u64, Matrix>,
 }
@@ -237,12 +237,23 @@ impl State {
     }
 
     fn channel(&mut self, condition: Option<u32>, channel: &PauliChannel) {
-        let PauliChoices::Listed(words) = &channel.choices else {
-            panic!("the tests list their channels");
+        let words = match &channel.choices {
+            PauliChoices::Listed(words) => words.clone(),
+            PauliChoices::Uniform(p) => {
+                let count = channel.qubits.len();
+                let each = p / f64::from((1u32 << (2 * count)) - 1);
+                let word = |code: u32| PauliWord {
+                    x: code & ((1 << count) - 1),
+                    z: code >> count,
+                };
+                (1u32..1 << (2 * count))
+                    .map(|code| (word(code), each))
+                    .collect()
+            }
         };
         let total: f64 = words.iter().map(|(_, p)| p).sum();
         let mut operators = vec![(1.0 - total, Matrix::identity(1 << self.qubits))];
-        for (word, p) in words {
+        for (word, p) in &words {
             let axis = channel.qubits.iter().enumerate().map(|(place, &qubit)| {
                 let (x, z) = (word.x >> place & 1 == 1, word.z >> place & 1 == 1);
                 (qubit, Pauli::from_parts(x, z))
@@ -332,7 +343,7 @@ impl State {
 }
 
 /// The state after a noisy circuit.
-pub(super) fn of_circuit(circuit: &NoisyCircuit, qubits: usize) -> State {
+pub(crate) fn of_circuit(circuit: &NoisyCircuit, qubits: usize) -> State {
     let mut state = State::new(qubits);
     for instruction in &circuit.instructions {
         let when = instruction.condition;
@@ -354,7 +365,7 @@ pub(super) fn of_circuit(circuit: &NoisyCircuit, qubits: usize) -> State {
 
 /// The state after a schedule, every site averaged over its members, every
 /// member put together from its components.
-pub(super) fn of_schedule(schedule: &Schedule, qubits: usize) -> State {
+pub(crate) fn of_schedule(schedule: &Schedule, qubits: usize) -> State {
     let mut state = State::new(qubits);
     for instruction in &schedule.instructions {
         let when = instruction.condition;
@@ -410,16 +421,28 @@ fn member_gate(qubits: usize, member: &magic::RotationMember, axis: &PauliProduc
     )
 }
 
+impl Matrix {
+    fn trace(&self) -> f64 {
+        (0..self.size)
+            .map(|i| self.entries[i * (self.size + 1)].re)
+            .sum()
+    }
+}
+
 impl State {
     /// Probability that the classical bits satisfy a condition.
     pub(super) fn probability(&self, holds: impl Fn(u64) -> bool) -> f64 {
-        let trace = |matrix: &Matrix| -> f64 {
-            (0..matrix.size)
-                .map(|i| matrix.entries[i * (matrix.size + 1)].re)
-                .sum()
-        };
         let cases = self.cases.iter().filter(|(bits, _)| holds(**bits));
-        cases.map(|(_, matrix)| trace(matrix)).sum()
+        cases.map(|(_, matrix)| matrix.trace()).sum()
+    }
+
+    /// The law of the classical bits of a mask.
+    pub(crate) fn law(&self, mask: u64) -> BTreeMap<u64, f64> {
+        let mut law = BTreeMap::new();
+        for (bits, matrix) in &self.cases {
+            *law.entry(bits & mask).or_insert(0.0) += matrix.trace();
+        }
+        law
     }
 }
 

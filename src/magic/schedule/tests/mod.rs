@@ -1,7 +1,7 @@
 //! Tests of the rewrites against density matrices, and of single values
 //! against published formulas.
 
-mod dense;
+pub(crate) mod dense;
 mod laws;
 mod random;
 mod values;

@@ -1,0 +1,1 @@
+"""The parts of scripts/bench: each module measures one thing and yields figures."""
