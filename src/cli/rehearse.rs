@@ -76,10 +76,10 @@ pub(super) fn model<'p>(
     let program = &input.program;
     let start = question.started.elapsed().as_secs_f64();
     let wants = |readout| question.all || request.readout.is_none_or(|wanted| wanted == readout);
-    let terms = !program.has_damping();
+    let log_damping = program.log_damping_trace();
     let mut survey = Survey::new(
         drive(input, sparsifier, question.seed),
-        log_extent,
+        log_extent + log_damping,
         request.threads,
         available_memory().min(request.memory) as f64,
         &INTERRUPT,
@@ -92,23 +92,17 @@ pub(super) fn model<'p>(
         memory: available_memory().min(request.memory),
     };
     let exact = choice::choose(program, log_extent, &unlimited).ok();
-    let blocks = match (terms, &exact) {
-        (true, _) => survey.companion_blocks(FEW as u64)?,
-        (false, Some(exact)) => survey.blocks(exact, FEW as u64)?,
-        (false, None) => Vec::new(),
-    };
+    let blocks = survey.companion_blocks(FEW as u64)?;
     stopped()?;
-    let mut overhead = file_costs(input, question, terms, &blocks)?;
+    let mut overhead = file_costs(input, question, &blocks)?;
     overhead.start = start;
     stopped()?;
-    let companion = match terms {
-        true => survey.companion(0.1)?,
-        false => None,
-    };
+    let companion = survey.companion(0.1)?;
     stopped()?;
     let mut model = Model {
         program: Some(program),
         log_extent,
+        log_damping,
         request,
         profile: Some(Profile::new(program)),
         walk: None,
@@ -119,12 +113,12 @@ pub(super) fn model<'p>(
         bare: None,
         blocked: None,
     };
-    if terms && wants(Readout::Walk) {
+    if wants(Readout::Walk) {
         let (least, most) = term_range(&model, question.deltas);
         model.walk = survey.walk(least, most, counted_bytes(program), 1.2)?;
         stopped()?;
     }
-    if terms && (question.all || request.readout == Some(Readout::Probe)) {
+    if (question.all || request.readout == Some(Readout::Probe)) && !program.has_damping() {
         let (_, most) = term_range(&model, question.deltas);
         let wish = Wish {
             readout: Some(Readout::Probe),
@@ -153,7 +147,9 @@ pub(super) fn model<'p>(
 /// as far as they can be counted.
 fn term_range(model: &Model<'_>, deltas: (f64, f64)) -> (u64, u64) {
     const MOST: u64 = u32::MAX as u64;
-    let at = |delta: f64| terms_for_delta(model.log_extent, delta).map_or(MOST, |k| k.min(MOST));
+    let at = |delta: f64| {
+        terms_for_delta(model.log_extent + model.log_damping, delta).map_or(MOST, |k| k.min(MOST))
+    };
     let (average, _) = model.terms(Accuracy::Average, Readout::Walk);
     let average = (average.min(MOST as f64) as u64).max(1);
     (at(deltas.1).min(average), at(deltas.0).max(average))
@@ -168,7 +164,6 @@ const FEW: usize = 1 << 11;
 fn file_costs(
     input: &Input,
     question: &Question<'_>,
-    companion: bool,
     blocks: &[Block],
 ) -> Result<Overhead, CommandError> {
     let memory = || plan::peak_memory().unwrap_or(0.0);
@@ -192,7 +187,7 @@ fn file_costs(
         "--shots".into(),
         STORED.to_string().into(),
         "--companion".into(),
-        if companion { "1" } else { "0" }.into(),
+        "1".into(),
         "--out".into(),
         folder.path().join("rehearsal.h5").into(),
         "--force".into(),
@@ -236,10 +231,7 @@ fn file_costs(
     let short = time(FEW, 0)?;
     let long = time(STORED, 0)?;
     let shot = (long - short).max(0.0) / written(blocks, STORED, FEW);
-    let companion = match companion {
-        true => (time(FEW, STORED)? - short).max(0.0) / written(blocks, STORED, 0),
-        false => 0.0,
-    };
+    let companion = (time(FEW, STORED)? - short).max(0.0) / written(blocks, STORED, 0);
     Ok(Overhead {
         end: (short - written(blocks, FEW, 0) * shot).max(0.0),
         shot,

@@ -52,6 +52,9 @@ pub struct Model<'p> {
     pub program: Option<&'p Program>,
     /// log ξ.
     pub log_extent: f64,
+    /// log of the bound on the companion's trace where entangled qubits are
+    /// damped, else 0: the number of terms is that of ξ times the trace.
+    pub log_damping: f64,
     /// What is asked for.
     pub request: Request,
     /// Active qubits, if the program could be compiled.
@@ -94,20 +97,21 @@ impl Model<'_> {
 
     /// Number of terms k as a real number, whatever its size, and its log₁₀.
     pub fn terms(&self, accuracy: Accuracy, readout: Readout) -> (f64, f64) {
+        let log_extent = self.log_extent + self.log_damping;
         let delta = match accuracy {
             Accuracy::Delta(delta) if readout == Readout::Probe => delta / 2.0,
             Accuracy::Delta(delta) => delta,
             Accuracy::Average => {
-                let terms = terms_for_average(self.log_extent).map(|terms| terms as f64);
+                let terms = terms_for_average(log_extent).map(|terms| terms as f64);
                 // Without bound k is ξ + 3.
-                let log10 = terms.map_or(self.log_extent / std::f64::consts::LN_10, f64::log10);
-                return (terms.unwrap_or(self.log_extent.exp()), log10);
+                let log10 = terms.map_or(log_extent / std::f64::consts::LN_10, f64::log10);
+                return (terms.unwrap_or(log_extent.exp()), log10);
             }
         };
-        if self.log_extent <= 0.0 || delta >= 2.0 {
+        if log_extent <= 0.0 || delta >= 2.0 {
             return (1.0, 0.0);
         }
-        let log = self.log_extent + (2.0 / delta - 1.0).ln();
+        let log = log_extent + (2.0 / delta - 1.0).ln();
         let terms = 1.0 + log.exp().ceil();
         let log10 = if terms.is_finite() {
             terms.log10()

@@ -84,18 +84,7 @@ impl<'p> Survey<'p> {
         })
     }
 
-    /// Some finished shots, for timing what is done with them.
-    pub fn blocks(&self, choice: &Choice, shots: u64) -> Result<Vec<Block>, SampleError> {
-        self.keep(|flag, sink| {
-            self.drive
-                .shots(choice, 0..shots, flag, &mut Silent, |block: &Block| {
-                    sink(block);
-                    Ok(())
-                })
-        })
-    }
-
-    /// Some finished companion shots.
+    /// Some finished companion shots, for timing what is done with them.
     pub fn companion_blocks(&self, shots: u64) -> Result<Vec<Block>, SampleError> {
         self.keep(|flag, sink| {
             self.drive

@@ -36,25 +36,34 @@ fn head(plan: &Plan, out: &mut String) -> std::fmt::Result {
         writeln!(out, "noise file  {noise}{title}")?;
     }
     let sites = &plan.sites;
-    let places = match sites.count {
-        1 => "place",
-        _ => "places",
+    let gates = match sites.as_written {
+        1 => "gate",
+        _ => "gates",
     };
-    let kept = match sites.count - sites.kept {
-        0 => String::new(),
-        without => format!(", {without} of them without effect"),
+    let left_out: Vec<String> = [
+        (sites.merged, "merged"),
+        (sites.deterministic, "on known axes"),
+        (sites.unobservable, "unseen"),
+    ]
+    .into_iter()
+    .filter(|&(count, _)| count > 0)
+    .map(|(count, word)| format!("{count} {word}"))
+    .collect();
+    let left_out = match left_out.is_empty() {
+        true => String::new(),
+        false => format!(" ({})", left_out.join(", ")),
     };
     writeln!(
         out,
-        "sites       {} non-Clifford {places}{kept}",
-        sites.count
+        "sites       {} non-Clifford {gates} as written, {} sites left{left_out}",
+        sites.as_written, sites.kept
     )?;
     let extent = |log10: f64| format_extent(log10 * std::f64::consts::LN_10);
     writeln!(
         out,
         "extent ξ    {} as written, {} with noise merged, {} in a run",
-        extent(sites.log10_extent_without_noise),
-        extent(sites.log10_extent_merged),
+        extent(sites.log10_extent_as_written),
+        extent(sites.log10_extent_after_noise),
         extent(sites.log10_extent)
     )?;
     for (index, costly) in plan.costliest.iter().take(3).enumerate() {

@@ -66,8 +66,9 @@ class Document(unittest.TestCase):
         self.assertEqual(set(self.document), set(expected))
         for name, kind in expected.items():
             self.assertIsInstance(self.document[name], kind, name)
-        for name in ("count", "kept", "log10_extent_without_noise", "log10_extent_merged",
-                     "log10_extent", "extent"):
+        for name in ("as_written", "merged", "deterministic", "unobservable", "kept",
+                     "log10_extent_as_written", "log10_extent_after_noise", "log10_extent",
+                     "extent"):
             self.assertIsInstance(self.document["sites"][name], number, name)
         for name in ("seconds", "start_seconds", "end_seconds", "companion_seconds",
                      "write_seconds", "write_companion_seconds", "memory_base",
