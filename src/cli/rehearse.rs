@@ -1,6 +1,7 @@
 //! Measures a run before it is made: shots of the circuit itself, and a result
 //! file in a temporary directory.
 
+use std::collections::HashSet;
 use std::ffi::OsString;
 use std::path::Path;
 use std::time::Instant;
@@ -96,6 +97,7 @@ pub(super) fn model<'p>(
     stopped()?;
     let mut overhead = file_costs(input, question, &blocks)?;
     overhead.start = start;
+    overhead.counting = counting_bytes(input, &blocks, request.shots);
     stopped()?;
     let companion = survey.companion(0.1)?;
     stopped()?;
@@ -241,6 +243,47 @@ fn file_costs(
         ..Overhead::default()
     })
 }
+
+/// Bytes that the summary takes for counting the words of record registers in so
+/// many shots. How many different words turn up is a power of the number of
+/// shots that some shots give away.
+fn counting_bytes(input: &Input, blocks: &[Block], shots: u64) -> f64 {
+    let mut first = 0;
+    let mut bytes = 0.0;
+    for register in run::recorded_registers(input) {
+        let (from, width) = (first, register.width);
+        first += width;
+        if register.role.word() != "record" || !(1..=64).contains(&width) {
+            continue;
+        }
+        let rows = blocks.iter().map(|block| &block.rows);
+        let words: Vec<u64> = rows
+            .flat_map(|rows| {
+                (0..rows.shots).map(move |shot| {
+                    (0..width).fold(0, |word, bit| {
+                        word | u64::from(rows.get(shot, from + bit)) << bit
+                    })
+                })
+            })
+            .collect();
+        let different = |words: &[u64]| words.iter().collect::<HashSet<_>>().len() as f64;
+        let (half, all) = (different(&words[..words.len() / 2]), different(&words));
+        if half < 1.0 {
+            continue;
+        }
+        let power = (all / half).log2().clamp(0.0, 1.0);
+        let grown = all * (shots as f64 / words.len() as f64).powf(power);
+        let different = grown.min((width as f64).exp2()).min(MOST_COUNTED);
+        // A table with 17 bytes a place, at most 7/8 full, its size a power of two;
+        // and a sorted list of 16 bytes an entry with half as much for sorting.
+        let places = (different * 8.0 / 7.0).log2().ceil().exp2();
+        bytes += 17.0 * places + 24.0 * different;
+    }
+    bytes
+}
+
+/// Most different words of a register that a summary counts.
+const MOST_COUNTED: f64 = 1_048_576.0;
 
 /// Blocks over and over, up to about so many shots.
 fn some(blocks: &[Block], shots: usize) -> impl Iterator<Item = &Block> {

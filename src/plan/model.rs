@@ -44,6 +44,8 @@ pub struct Overhead {
     pub memory: f64,
     /// Bytes of a finished shot that waits to be written.
     pub waiting: f64,
+    /// Bytes for counting outcomes at the end, when the registers are gone.
+    pub counting: f64,
 }
 
 /// Costs of a circuit by read-out.
@@ -237,7 +239,8 @@ impl Model<'_> {
                 self.request.threads,
             ))
         });
-        let memory_bytes = self.overhead.memory + registers + waiting * self.overhead.waiting;
+        let drawing = registers + waiting * self.overhead.waiting;
+        let memory_bytes = self.overhead.memory + drawing.max(self.overhead.counting);
         let seconds = predicted.map(|predicted| {
             // Shots go to threads whole.
             let threads = self.request.threads as u64;

@@ -29,7 +29,12 @@ pub fn text(plan: &Plan) -> String {
 }
 
 fn head(plan: &Plan, out: &mut String) -> std::fmt::Result {
-    writeln!(out, "circuit     {}, {} qubits", plan.circuit, plan.qubits)?;
+    let qubits = if plan.qubits == 1 { "qubit" } else { "qubits" };
+    writeln!(
+        out,
+        "circuit     {}, {} {qubits}",
+        plan.circuit, plan.qubits
+    )?;
     if let Some(noise) = &plan.noise {
         let title = plan.title.as_ref();
         let title = title.map(|title| format!(" ({title})")).unwrap_or_default();
@@ -105,8 +110,9 @@ fn profile(active: &Profile, out: &mut String) -> std::fmt::Result {
     let most = if active.exact { "" } else { "up to " };
     writeln!(
         out,
-        "active      {most}{} qubits at once{}",
+        "active      {most}{} {} at once{}",
         active.peak,
+        if active.peak == 1 { "qubit" } else { "qubits" },
         if active.exact {
             ""
         } else {
