@@ -32,6 +32,8 @@ CASES = [
 ]
 TIME_LIMIT = 0.25
 MEMORY_LIMIT = 0.15
+# What a wrong automatic choice may cost, over the better read-out.
+AUTO_LIMIT = 1.5
 
 
 def arguments(case):
@@ -78,8 +80,11 @@ def run(program, case, readout, shots, folder):
 
 def check(program, case, readout, seconds, repeats, folder):
     """Plans and runs one case; `seconds` is about what a run should take."""
-    row, _ = plan(program, case, readout, 1000)
-    shots = max(2, int(seconds / max(row["seconds"] / 1000, 1e-9)))
+    shots = 1000
+    for _ in range(3):
+        row, _ = plan(program, case, readout, shots)
+        factor = min(seconds / max(row["seconds"], 1e-9), 100)
+        shots = max(2, int(shots * factor))
     ratios, memories, planning = [], [], []
     for _ in range(repeats):
         before, took = plan(program, case, readout, shots)
@@ -94,6 +99,42 @@ def check(program, case, readout, seconds, repeats, folder):
             "memory_ratio": statistics.median(memories), "planning": max(planning)}
 
 
+def choose(program, case, seconds, repeats, folder):
+    """Time of `auto` over that of the better of dense and walk, as a median."""
+    better = min((plan(program, case, readout, 1000)[0]["seconds_a_shot"]
+                  for readout in ("dense", "walk")), default=1e-3)
+    shots = max(2, int(seconds / better))
+    ratios = []
+    for _ in range(repeats):
+        taken = {}
+        for readout in ("dense", "auto", "walk"):
+            # What is hopelessly slow is not the better one.
+            limit = 20 * seconds
+            estimate = plan(program, case, readout, shots)[0] if readout != "auto" else None
+            if estimate and estimate["seconds"] > limit:
+                continue
+            taken[readout] = run(program, case, readout, shots, folder)[0]
+        best = min(value for readout, value in taken.items() if readout != "auto")
+        ratios.append(taken["auto"] / best)
+    return {"shots": shots, "ratio": statistics.median(ratios), "ratios": ratios, "taken": taken}
+
+
+def main_auto(program, cases, options):
+    """Prints what `auto` costs over the better read-out."""
+    bad = 0
+    print(f"{'circuit':<16}{'delta':>6}{'shots':>9}{'auto/best':>10}   seconds, last repeat")
+    with tempfile.TemporaryDirectory() as folder:
+        for case in cases:
+            found = choose(program, case, options.seconds, options.repeats, folder)
+            off = found["ratio"] > AUTO_LIMIT
+            bad += off
+            seconds = ", ".join(f"{name} {value:.2f}" for name, value in found["taken"].items())
+            print(f"{pathlib.Path(case[0]).stem:<16}{case[2]:>6}{found['shots']:>9}"
+                  f"{found['ratio']:>10.2f}   {seconds}{'  OFF' if off else ''}", flush=True)
+    print(f"{bad} choices cost more than {AUTO_LIMIT} times the better read-out")
+    sys.exit(1 if bad else 0)
+
+
 def main():
     parser = argparse.ArgumentParser(description=__doc__)
     parser.add_argument("--program", required=True)
@@ -101,6 +142,8 @@ def main():
     parser.add_argument("--repeats", type=int, default=3)
     parser.add_argument("--case", action="append", default=[],
                         help="CIRCUIT.qasm[:READOUT[:DELTA]] besides the demo circuits")
+    parser.add_argument("--auto", action="store_true",
+                        help="check the automatic choice of the read-out instead")
     parser.add_argument("--only", action="store_true", help="without the demo circuits")
     options = parser.parse_args()
     program = str(pathlib.Path(options.program).resolve())
@@ -108,6 +151,8 @@ def main():
     for word in options.case:
         circuit, readout, delta = (word.split(":") + ["walk", "0.1"][word.count(":"):])[:3]
         cases.append((circuit, None, float(delta), (readout,)))
+    if options.auto:
+        main_auto(program, cases, options)
     print(f"{'circuit':<16}{'delta':>6}{'read-out':>9}{'terms':>8}{'shots':>9}{'actual s':>9}"
           f"{'time':>7}{'MiB':>7}{'memory':>8}{'plan s':>7}   predicted/actual")
     bad = 0

@@ -34,6 +34,7 @@ pub(super) struct Input {
 }
 
 /// What came of the non-Clifford gates.
+#[derive(Clone)]
 pub(super) struct Reduction {
     pub written: Written,
     /// ln ξ once noise was merged.

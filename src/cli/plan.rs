@@ -16,7 +16,7 @@ use crate::report::figure::plan_figure;
 use crate::report::plan_text;
 
 use super::CommandError;
-use super::input::{self, Input, Reading, Scheduled, Texts};
+use super::input::{self, Input, Reading, Reduction, Scheduled, Texts};
 use super::machine::{available_memory, catch_interrupts, start_threads};
 use super::options::{Plan as PlanOptions, Switch};
 use super::picture;
@@ -50,8 +50,9 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
     })?;
     let threads = start_threads(options.threads)?;
     catch_interrupts()?;
-    // Extents before anything is done to the sites but merging noise.
-    let written = schedule.sites.clone();
+    // Kept aside, for circuits that cannot be compiled.
+    let left = schedule.sites.clone();
+    let told = reduction.clone();
     let compiled = Program::compile(schedule, circuit.qubits.len(), circuit.bits);
     let available = available_memory();
     let request = Request {
@@ -73,7 +74,8 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
         deltas: &deltas,
         limited,
         started,
-        written: &written,
+        left: &left,
+        reduction: &told,
     };
     let made = match compiled {
         Ok(program) => {
@@ -108,10 +110,11 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
             asked.plan(&model, &input.circuit, &input.texts, input.title.as_deref())
         }
         Err(error) => {
-            let log_extent = log_extent(&written);
+            let log_extent = log_extent(&left);
             let model = Model {
                 program: None,
                 log_extent,
+                log_damping: 0.0,
                 request,
                 profile: None,
                 walk: None,
@@ -123,7 +126,7 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
                     memory: plan::peak_memory().unwrap_or(0.0),
                     ..Overhead::default()
                 },
-                bare: Some((written.len(), measure_bare())),
+                bare: Some((left.len(), measure_bare())),
                 blocked: Some(error.to_string()),
             };
             asked.plan(&model, &circuit, &texts, title.as_deref())
@@ -153,7 +156,9 @@ struct Asked<'a> {
     deltas: &'a [f64],
     limited: bool,
     started: Instant,
-    written: &'a [Site],
+    /// Sites of the schedule.
+    left: &'a [Site],
+    reduction: &'a Reduction,
 }
 
 impl Asked<'_> {
@@ -167,7 +172,7 @@ impl Asked<'_> {
         let rows = model.rows(self.deltas);
         let kept: Vec<&Site> = match model.program {
             Some(program) => program.sites().iter().collect(),
-            None => self.written.iter().collect(),
+            None => self.left.iter().collect(),
         };
         let costliest = costliest(&Places::new(circuit), &kept);
         let limits = Limits {
@@ -183,9 +188,12 @@ impl Asked<'_> {
                 Some(plan_text::refusal(&refusal, &costliest, self.request.shots)),
             ),
         };
-        let log10 = |extent: &dyn Fn(&Site) -> f64| -> f64 {
-            self.written.iter().map(|site| extent(site).log10()).sum()
-        };
+        let Reduction {
+            written,
+            log_extent_after_noise,
+            counts,
+        } = self.reduction;
+        let idle = self.left.len() - kept.len();
         let extent = model.log_extent.exp();
         Plan {
             program_version: env!("CARGO_PKG_VERSION").to_owned(),
@@ -204,10 +212,13 @@ impl Asked<'_> {
             },
             threads: self.request.threads as u64,
             sites: PlanSites {
-                count: self.written.len() as u64,
+                as_written: written.gates as u64,
+                merged: counts.merged as u64,
+                deterministic: (counts.deterministic + idle) as u64,
+                unobservable: counts.unobservable as u64,
                 kept: kept.len() as u64,
-                log10_extent_without_noise: log10(&|site| site.extent_without_noise),
-                log10_extent_merged: log10(&|site| site.extent),
+                log10_extent_as_written: written.log_extent / std::f64::consts::LN_10,
+                log10_extent_after_noise: log_extent_after_noise / std::f64::consts::LN_10,
                 log10_extent: model.log_extent / std::f64::consts::LN_10,
                 extent: extent.is_finite().then_some(extent),
             },

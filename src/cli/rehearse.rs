@@ -1,6 +1,7 @@
 //! Measures a run before it is made: shots of the circuit itself, and a result
 //! file in a temporary directory.
 
+use std::collections::HashSet;
 use std::ffi::OsString;
 use std::path::Path;
 use std::time::Instant;
@@ -15,7 +16,7 @@ use crate::plan::{
 };
 use crate::readout::choice::{self, Readout, TermCount, Wish};
 use crate::report::Summary;
-use crate::sampler::{Block, Drive, SampleError};
+use crate::sampler::{Block, Drive, SampleError, ShotAudit};
 use crate::store::{Finished, ShotFile};
 
 use super::CommandError;
@@ -76,10 +77,10 @@ pub(super) fn model<'p>(
     let program = &input.program;
     let start = question.started.elapsed().as_secs_f64();
     let wants = |readout| question.all || request.readout.is_none_or(|wanted| wanted == readout);
-    let terms = !program.has_damping();
+    let log_damping = program.log_damping_trace();
     let mut survey = Survey::new(
         drive(input, sparsifier, question.seed),
-        log_extent,
+        log_extent + log_damping,
         request.threads,
         available_memory().min(request.memory) as f64,
         &INTERRUPT,
@@ -92,24 +93,18 @@ pub(super) fn model<'p>(
         memory: available_memory().min(request.memory),
     };
     let exact = choice::choose(program, log_extent, &unlimited).ok();
-    let companion = match terms {
-        true => survey.companion(0.1)?,
-        false => None,
-    };
+    let blocks = survey.companion_blocks(FEW as u64)?;
     stopped()?;
-    let blocks = match (terms, &exact) {
-        (true, _) => survey.companion_blocks(STORED as u64)?,
-        (false, Some(exact)) => survey.blocks(exact, STORED as u64)?,
-        (false, None) => Vec::new(),
-    };
-    stopped()?;
-    let mut overhead = file_costs(input, question, terms, &blocks)?;
+    let mut overhead = file_costs(input, question, &blocks)?;
     overhead.start = start;
-    overhead.memory = plan::peak_memory().unwrap_or(0.0);
+    overhead.counting = counting_bytes(input, &blocks, request.shots);
+    stopped()?;
+    let companion = survey.companion(0.1)?;
     stopped()?;
     let mut model = Model {
         program: Some(program),
         log_extent,
+        log_damping,
         request,
         profile: Some(Profile::new(program)),
         walk: None,
@@ -120,14 +115,20 @@ pub(super) fn model<'p>(
         bare: None,
         blocked: None,
     };
-    if terms && wants(Readout::Walk) {
+    if wants(Readout::Walk) {
         let (least, most) = term_range(&model, question.deltas);
         model.walk = survey.walk(least, most, counted_bytes(program), 1.2)?;
         stopped()?;
     }
-    if terms && (question.all || request.readout == Some(Readout::Probe)) {
+    if (question.all || request.readout == Some(Readout::Probe)) && !program.has_damping() {
         let (_, most) = term_range(&model, question.deltas);
-        model.probe = survey.probe(most, 0.3)?;
+        let wish = Wish {
+            readout: Some(Readout::Probe),
+            delta: question.deltas.1,
+            ..unlimited
+        };
+        let anchor = choice::choose(program, log_extent, &wish).ok();
+        model.probe = survey.probe(most, anchor.as_ref(), 0.3)?;
         stopped()?;
     }
     if wants(Readout::Dense)
@@ -148,7 +149,9 @@ pub(super) fn model<'p>(
 /// as far as they can be counted.
 fn term_range(model: &Model<'_>, deltas: (f64, f64)) -> (u64, u64) {
     const MOST: u64 = u32::MAX as u64;
-    let at = |delta: f64| terms_for_delta(model.log_extent, delta).map_or(MOST, |k| k.min(MOST));
+    let at = |delta: f64| {
+        terms_for_delta(model.log_extent + model.log_damping, delta).map_or(MOST, |k| k.min(MOST))
+    };
     let (average, _) = model.terms(Accuracy::Average, Readout::Walk);
     let average = (average.min(MOST as f64) as u64).max(1);
     (at(deltas.1).min(average), at(deltas.0).max(average))
@@ -156,18 +159,24 @@ fn term_range(model: &Model<'_>, deltas: (f64, f64)) -> (u64, u64) {
 
 /// Most shots of a rehearsed result file.
 const STORED: usize = 1 << 15;
+/// Fewest.
+const FEW: usize = 1 << 11;
 
 /// Times writing, finishing and summing up result files of two sizes.
 fn file_costs(
     input: &Input,
     question: &Question<'_>,
-    companion: bool,
     blocks: &[Block],
 ) -> Result<Overhead, CommandError> {
-    let drawn: usize = blocks.iter().map(|block| block.rows.shots).sum();
-    if drawn == 0 {
-        return Ok(Overhead::default());
-    }
+    let memory = || plan::peak_memory().unwrap_or(0.0);
+    let Some(first) = blocks.iter().find(|block| block.rows.shots > 0) else {
+        return Ok(Overhead {
+            memory: memory(),
+            ..Overhead::default()
+        });
+    };
+    // Lists grow by doubling, so up to twice what a shot takes.
+    let waiting = 2 * (first.rows.words * size_of::<u64>() + size_of::<ShotAudit>());
     let folder = tempfile::tempdir().map_err(|error| {
         CommandError::Usage(format!(
             "cannot make a temporary directory to time a result file in: {error}"
@@ -180,7 +189,7 @@ fn file_costs(
         "--shots".into(),
         STORED.to_string().into(),
         "--companion".into(),
-        if companion { "1" } else { "0" }.into(),
+        "1".into(),
         "--out".into(),
         folder.path().join("rehearsal.h5").into(),
         "--force".into(),
@@ -219,22 +228,62 @@ fn file_costs(
         std::hint::black_box(summary.to_string().len());
         Ok(started.elapsed().as_secs_f64())
     };
-    let few = STORED / 16;
-    time(few, 0)?;
-    let short = time(few, 0)?;
+    time(FEW, 0)?;
+    let memory = memory();
+    let short = time(FEW, 0)?;
     let long = time(STORED, 0)?;
-    let shot = (long - short).max(0.0) / written(blocks, STORED, few);
-    let companion = match companion {
-        true => (time(few, STORED)? - short).max(0.0) / written(blocks, STORED, 0),
-        false => 0.0,
-    };
+    let shot = (long - short).max(0.0) / written(blocks, STORED, FEW);
+    let companion = (time(FEW, STORED)? - short).max(0.0) / written(blocks, STORED, 0);
     Ok(Overhead {
-        end: (short - written(blocks, few, 0) * shot).max(0.0),
+        end: (short - written(blocks, FEW, 0) * shot).max(0.0),
         shot,
         companion,
+        memory,
+        waiting: waiting as f64,
         ..Overhead::default()
     })
 }
+
+/// Bytes that the summary takes for counting the words of record registers in so
+/// many shots. How many different words turn up is a power of the number of
+/// shots that some shots give away.
+fn counting_bytes(input: &Input, blocks: &[Block], shots: u64) -> f64 {
+    let mut first = 0;
+    let mut bytes = 0.0;
+    for register in run::recorded_registers(input) {
+        let (from, width) = (first, register.width);
+        first += width;
+        if register.role.word() != "record" || !(1..=64).contains(&width) {
+            continue;
+        }
+        let rows = blocks.iter().map(|block| &block.rows);
+        let words: Vec<u64> = rows
+            .flat_map(|rows| {
+                (0..rows.shots).map(move |shot| {
+                    (0..width).fold(0, |word, bit| {
+                        word | u64::from(rows.get(shot, from + bit)) << bit
+                    })
+                })
+            })
+            .collect();
+        let different = |words: &[u64]| words.iter().collect::<HashSet<_>>().len() as f64;
+        let (half, all) = (different(&words[..words.len() / 2]), different(&words));
+        if half < 1.0 {
+            continue;
+        }
+        let power = (all / half).log2().clamp(0.0, 1.0);
+        let grown = all * (shots as f64 / words.len() as f64).powf(power);
+        let different = grown.min((width as f64).exp2()).min(MOST_COUNTED);
+        // A table with 17 bytes a place, at most 7/8 full, its size a power of two;
+        // and a sorted list of 16 bytes an entry with half as much for sorting.
+        let places = (different * 8.0 / 7.0).log2().ceil().exp2();
+        bytes += 17.0 * places + 24.0 * different;
+    }
+    bytes
+}
+
+/// Most different words of a register that a summary counts.
+const MOST_COUNTED: f64 = 1_048_576.0;
 
 /// Blocks over and over, up to about so many shots.
 fn some(blocks: &[Block], shots: usize) -> impl Iterator<Item = &Block> {

@@ -417,7 +417,8 @@ fn reduction(input: &Input) -> ReductionHeader {
     }
 }
 
-fn recorded_registers(input: &Input) -> Vec<&BitRegister> {
+/// The registers that are recorded.
+pub(super) fn recorded_registers(input: &Input) -> Vec<&BitRegister> {
     let registers = input.circuit.registers.iter();
     registers.filter(|register| register.recorded).collect()
 }

@@ -24,7 +24,7 @@ use super::survey::Survey;
 /// Ratio of rough costs that needs no measurement.
 pub const PLAIN: f64 = 20.0;
 /// Rough seconds of a run below which no measurement pays.
-pub const SMALL: f64 = 1.0;
+pub const SMALL: f64 = 2.0;
 /// By how much the other read-out must be cheaper to be taken.
 pub const MARGIN: f64 = 1.15;
 

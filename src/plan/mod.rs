@@ -22,9 +22,10 @@
 //! ```text
 //! { "program_version", "circuit", "noise", "title",             texts
 //!   "qubits", "shots", "companion_shots", "threads",            whole numbers
-//!   "sites": { "count", "kept", "log10_extent_without_noise",   as written
-//!              "log10_extent_merged",     noise merged, sites as written
-//!              "log10_extent", "extent" } of the run
+//!   "sites": { "as_written", "merged", "deterministic", "unobservable", "kept",
+//!              "log10_extent_as_written",       every gate by itself, no noise
+//!              "log10_extent_after_noise",      noise merged
+//!              "log10_extent", "extent" }       of a run, sites reduced
 //!   "costliest": [ { "lines": [number, …], "kind", "count", "extent",
 //!                   "log10_share" }, … ]
 //!   "active": { "peak", "exact", "steps": [number, …] } | null

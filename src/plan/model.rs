@@ -5,6 +5,8 @@ use crate::program::Program;
 use crate::readout::choice::{self, Choice, ChoiceError, Readout, TermCount, Wish};
 use crate::readout::probe::{MIN_PROBES, probes_for};
 
+use crate::sampler::batch::most_in_flight;
+
 use super::bare::Bare;
 use super::probe::ProbeCost;
 use super::profile::Profile;
@@ -38,8 +40,12 @@ pub struct Overhead {
     pub shot: f64,
     /// The same for a companion shot.
     pub companion: f64,
-    /// Bytes of the process without any register.
+    /// Bytes of the process without any register and with few shots.
     pub memory: f64,
+    /// Bytes of a finished shot that waits to be written.
+    pub waiting: f64,
+    /// Bytes for counting outcomes at the end, when the registers are gone.
+    pub counting: f64,
 }
 
 /// Costs of a circuit by read-out.
@@ -48,6 +54,9 @@ pub struct Model<'p> {
     pub program: Option<&'p Program>,
     /// log ξ.
     pub log_extent: f64,
+    /// log of the bound on the companion's trace where entangled qubits are
+    /// damped, else 0: the number of terms is that of ξ times the trace.
+    pub log_damping: f64,
     /// What is asked for.
     pub request: Request,
     /// Active qubits, if the program could be compiled.
@@ -90,20 +99,21 @@ impl Model<'_> {
 
     /// Number of terms k as a real number, whatever its size, and its log₁₀.
     pub fn terms(&self, accuracy: Accuracy, readout: Readout) -> (f64, f64) {
+        let log_extent = self.log_extent + self.log_damping;
         let delta = match accuracy {
             Accuracy::Delta(delta) if readout == Readout::Probe => delta / 2.0,
             Accuracy::Delta(delta) => delta,
             Accuracy::Average => {
-                let terms = terms_for_average(self.log_extent).map(|terms| terms as f64);
+                let terms = terms_for_average(log_extent).map(|terms| terms as f64);
                 // Without bound k is ξ + 3.
-                let log10 = terms.map_or(self.log_extent / std::f64::consts::LN_10, f64::log10);
-                return (terms.unwrap_or(self.log_extent.exp()), log10);
+                let log10 = terms.map_or(log_extent / std::f64::consts::LN_10, f64::log10);
+                return (terms.unwrap_or(log_extent.exp()), log10);
             }
         };
-        if self.log_extent <= 0.0 || delta >= 2.0 {
+        if log_extent <= 0.0 || delta >= 2.0 {
             return (1.0, 0.0);
         }
-        let log = self.log_extent + (2.0 / delta - 1.0).ln();
+        let log = log_extent + (2.0 / delta - 1.0).ln();
         let terms = 1.0 + log.exp().ceil();
         let log10 = if terms.is_finite() {
             terms.log10()
@@ -173,17 +183,16 @@ impl Model<'_> {
             }),
             _ => None,
         };
-        let memory = self.overhead.memory
-            + terms * self.request.threads as f64 * self.bytes_per_term(readout);
+        let registers = terms * self.request.threads as f64 * self.bytes_per_term(readout);
         let mut estimate = Estimate {
             terms: (terms < 9.0e15).then_some(terms as u64),
             log10_terms: Some(log10_terms),
             probes: random_states.map(|count| count as u64),
-            ..self.estimate(readout, predicted, memory)
+            ..self.estimate(readout, predicted, registers)
         };
         estimate.refused = match choice {
             Err(reason) => Some(reason),
-            Ok(_) => self.too_much_memory(memory),
+            Ok(_) => self.too_much_memory(estimate.memory_bytes),
         };
         estimate
     }
@@ -199,14 +208,13 @@ impl Model<'_> {
                 followed
             }
         });
-        let memory = active.map_or(f64::INFINITY, |active| {
-            self.overhead.memory
-                + self.request.threads as f64 * 16.0 * (active.min(1000) as f64).exp2()
+        let registers = active.map_or(f64::INFINITY, |active| {
+            self.request.threads as f64 * 16.0 * (active.min(1000) as f64).exp2()
         });
-        let mut estimate = self.estimate(Readout::Dense, self.dense, memory);
+        let mut estimate = self.estimate(Readout::Dense, self.dense, registers);
         estimate.refused = match choice {
             Err(reason) => Some(reason),
-            Ok(_) => self.too_much_memory(memory),
+            Ok(_) => self.too_much_memory(estimate.memory_bytes),
         };
         estimate
     }
@@ -221,12 +229,18 @@ impl Model<'_> {
         })
     }
 
-    fn estimate(
-        &self,
-        readout: Readout,
-        predicted: Option<Predicted>,
-        memory_bytes: f64,
-    ) -> Estimate {
+    fn estimate(&self, readout: Readout, predicted: Option<Predicted>, registers: f64) -> Estimate {
+        let companion = self.companion_shots(readout);
+        // Companion shots are the faster ones.
+        let waiting = predicted.map_or(0.0, |predicted| {
+            in_flight(self.request.shots, predicted.seconds, self.request.threads).max(in_flight(
+                companion,
+                self.companion.unwrap_or(1.0),
+                self.request.threads,
+            ))
+        });
+        let drawing = registers + waiting * self.overhead.waiting;
+        let memory_bytes = self.overhead.memory + drawing.max(self.overhead.counting);
         let seconds = predicted.map(|predicted| {
             // Shots go to threads whole.
             let threads = self.request.threads as u64;
@@ -234,7 +248,7 @@ impl Model<'_> {
                 0 => 0,
                 shots => shots.max(threads),
             };
-            let companion = self.companion_shots(readout) as f64;
+            let companion = companion as f64;
             let Overhead {
                 start, end, shot, ..
             } = self.overhead;
@@ -268,6 +282,11 @@ impl Model<'_> {
             _ => counted,
         }
     }
+}
+
+/// Shots that wait to be written at once.
+fn in_flight(shots: u64, seconds_a_shot: f64, threads: usize) -> f64 {
+    most_in_flight(seconds_a_shot * threads as f64, threads).min(shots as f64)
 }
 
 /// Bytes of one term as counted from its fields.

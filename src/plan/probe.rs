@@ -8,7 +8,8 @@
 //!
 //! with A the cap of the acceptance ratio, α the other passes of a shot and β
 //! one random state at all its measurements. Two short runs with every shot kept
-//! (A = 1), at two L, give α and β.
+//! (A = 1), at two L, give α and β; one with its real acceptance puts the sum
+//! right.
 
 use crate::readout::probe::acceptance_cap;
 
@@ -26,6 +27,8 @@ pub struct ProbeCost {
     pass: f64,
     /// β.
     state: f64,
+    /// What a run with its real acceptance took over what the formula says.
+    scale: f64,
 }
 
 impl ProbeCost {
@@ -39,6 +42,18 @@ impl ProbeCost {
             measurements: (measurements as f64).max(1.0),
             pass: (few / terms - state * FEW as f64).max(0.0),
             state,
+            scale: 1.0,
+        }
+    }
+
+    /// The same, put right by shots with their real acceptance, drawn `attempts`
+    /// times each.
+    pub fn anchored(self, terms: f64, probes: f64, attempts: f64, seconds: f64) -> Self {
+        let formula = self.formula(terms, probes, attempts);
+        let scale = seconds / formula;
+        ProbeCost {
+            scale: if scale.is_finite() { scale } else { 1.0 },
+            ..self
         }
     }
 
@@ -46,6 +61,10 @@ impl ProbeCost {
     pub fn predict(&self, terms: f64, probes: f64) -> f64 {
         let count = terms.min(1e18) as u64;
         let attempts = acceptance_cap(self.log_extent, count, probes as usize).min(1e6);
+        self.scale * self.formula(terms, probes, attempts)
+    }
+
+    fn formula(&self, terms: f64, probes: f64, attempts: f64) -> f64 {
         let estimates = 1.0 + (attempts - 1.0) / self.measurements;
         terms * (self.pass * attempts + self.state * probes * estimates)
     }
@@ -65,5 +84,7 @@ mod tests {
         let cap = acceptance_cap(0.0, 1000, 50);
         let expected = 1000.0 * (pass * cap + state * 50.0 * (1.0 + (cap - 1.0) / 4.0));
         assert!((cost.predict(1000.0, 50.0) / expected - 1.0).abs() < 1e-9);
+        let slow = cost.anchored(1000.0, 50.0, cap, 3.0 * expected);
+        assert!((slow.predict(1000.0, 50.0) / expected - 3.0).abs() < 1e-9);
     }
 }

@@ -43,6 +43,8 @@ fn word<S: serde::Serializer>(readout: &Readout, serializer: S) -> Result<S::Ok,
 pub struct Refusal {
     /// What the cheapest way would take, or why there is none.
     pub reason: String,
+    /// Whether the read-out is one whose cost grows with ξ.
+    pub terms: bool,
     /// log₁₀ of the ξ up to which δ = 1 would be within the limits, if less ξ
     /// helps at all.
     pub log10_extent: Option<f64>,
@@ -144,6 +146,7 @@ fn refuse(model: &Model<'_>, limits: &Limits, readout: Readout, at_most: &Estima
     });
     Refusal {
         reason,
+        terms,
         log10_extent,
         shots,
     }

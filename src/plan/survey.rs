@@ -84,18 +84,7 @@ impl<'p> Survey<'p> {
         })
     }
 
-    /// Some finished shots, for timing what is done with them.
-    pub fn blocks(&self, choice: &Choice, shots: u64) -> Result<Vec<Block>, SampleError> {
-        self.keep(|flag, sink| {
-            self.drive
-                .shots(choice, 0..shots, flag, &mut Silent, |block: &Block| {
-                    sink(block);
-                    Ok(())
-                })
-        })
-    }
-
-    /// Some finished companion shots.
+    /// Some finished companion shots, for timing what is done with them.
     pub fn companion_blocks(&self, shots: u64) -> Result<Vec<Block>, SampleError> {
         self.keep(|flag, sink| {
             self.drive
@@ -229,8 +218,14 @@ impl<'p> Survey<'p> {
         }
     }
 
-    /// The probe, measured with at most `most` terms.
-    pub fn probe(&mut self, most: u64, seconds: f64) -> Result<Option<ProbeCost>, SampleError> {
+    /// The probe, measured with at most `most` terms, and with the real settings of
+    /// `anchor` where those shots are short enough.
+    pub fn probe(
+        &mut self,
+        most: u64,
+        anchor: Option<&Choice>,
+        seconds: f64,
+    ) -> Result<Option<ProbeCost>, SampleError> {
         const FIRST: u64 = 32;
         let slice = Slice {
             aim: seconds / 3.0,
@@ -250,13 +245,30 @@ impl<'p> Survey<'p> {
             return Ok(None);
         };
         let measurements = self.drive.program.inner_measurements();
-        Ok(Some(ProbeCost::new(
+        let cost = ProbeCost::new(
             self.log_extent,
             measurements,
             terms,
             few.seconds,
             many.seconds,
-        )))
+        );
+        let Some((choice, settings, terms)) =
+            anchor.and_then(|choice| Some((choice, choice.probe?, choice.terms?)))
+        else {
+            return Ok(Some(cost));
+        };
+        let (terms, probes) = (terms as f64, settings.probes as f64);
+        if cost.predict(terms, probes) * self.threads as f64 > LONGEST_RUNG {
+            return Ok(Some(cost));
+        }
+        let slice = Slice {
+            aim: seconds,
+            most: seconds + 2.0 * LONGEST_RUNG,
+        };
+        Ok(Some(match self.time(choice, slice)? {
+            Some(timing) => cost.anchored(terms, probes, timing.attempts, timing.seconds),
+            None => cost,
+        }))
     }
 
     fn probe_timing(

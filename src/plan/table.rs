@@ -58,14 +58,20 @@ pub struct Plan {
 /// Sites and their extents.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize)]
 pub struct PlanSites {
-    /// Sites of the circuit.
-    pub count: u64,
-    /// Sites that matter.
+    /// Non-Clifford gates as written.
+    pub as_written: u64,
+    /// Sites that merged into earlier ones, or became Clifford by that.
+    pub merged: u64,
+    /// Sites on an axis whose value is known, up to a sign.
+    pub deterministic: u64,
+    /// Sites that no recorded bit depends on.
+    pub unobservable: u64,
+    /// Sites that are left and matter.
     pub kept: u64,
-    /// log₁₀ of the extent as written, noise left out.
-    pub log10_extent_without_noise: f64,
-    /// log₁₀ of the extent with noise merged, every site as written.
-    pub log10_extent_merged: f64,
+    /// log₁₀ of the extent as written: every gate by itself, noise left out.
+    pub log10_extent_as_written: f64,
+    /// log₁₀ of the extent with noise merged, before sites were reduced.
+    pub log10_extent_after_noise: f64,
     /// log₁₀ ξ of a run.
     pub log10_extent: f64,
     /// ξ; absent where it is too large for a double.

@@ -165,8 +165,11 @@ fn start_excess(weight: f64) -> f64 {
 /// Interpolation on log axes.
 fn between(low: &Rung, high: &Rung, terms: f64) -> f64 {
     let share = (terms / low.terms as f64).ln() / (high.terms as f64 / low.terms as f64).ln();
-    let (low, high) = (low.timing.seconds.ln(), high.timing.seconds.ln());
-    (low + share * (high - low)).exp()
+    let (low, high) = (low.timing.seconds, high.timing.seconds);
+    // Rounding must not lead out of the two.
+    (low.ln() + share * (high / low).ln())
+        .exp()
+        .clamp(low, high)
 }
 
 /// Numbers of terms to measure at, ascending: from `least` to `most` by about

@@ -29,32 +29,46 @@ pub fn text(plan: &Plan) -> String {
 }
 
 fn head(plan: &Plan, out: &mut String) -> std::fmt::Result {
-    writeln!(out, "circuit     {}, {} qubits", plan.circuit, plan.qubits)?;
+    let qubits = if plan.qubits == 1 { "qubit" } else { "qubits" };
+    writeln!(
+        out,
+        "circuit     {}, {} {qubits}",
+        plan.circuit, plan.qubits
+    )?;
     if let Some(noise) = &plan.noise {
         let title = plan.title.as_ref();
         let title = title.map(|title| format!(" ({title})")).unwrap_or_default();
         writeln!(out, "noise file  {noise}{title}")?;
     }
     let sites = &plan.sites;
-    let places = match sites.count {
-        1 => "place",
-        _ => "places",
+    let gates = match sites.as_written {
+        1 => "gate",
+        _ => "gates",
     };
-    let kept = match sites.count - sites.kept {
-        0 => String::new(),
-        without => format!(", {without} of them without effect"),
+    let left_out: Vec<String> = [
+        (sites.merged, "merged"),
+        (sites.deterministic, "on known axes"),
+        (sites.unobservable, "unseen"),
+    ]
+    .into_iter()
+    .filter(|&(count, _)| count > 0)
+    .map(|(count, word)| format!("{count} {word}"))
+    .collect();
+    let left_out = match left_out.is_empty() {
+        true => String::new(),
+        false => format!(" ({})", left_out.join(", ")),
     };
     writeln!(
         out,
-        "sites       {} non-Clifford {places}{kept}",
-        sites.count
+        "sites       {} non-Clifford {gates} as written, {} sites left{left_out}",
+        sites.as_written, sites.kept
     )?;
     let extent = |log10: f64| format_extent(log10 * std::f64::consts::LN_10);
     writeln!(
         out,
         "extent ξ    {} as written, {} with noise merged, {} in a run",
-        extent(sites.log10_extent_without_noise),
-        extent(sites.log10_extent_merged),
+        extent(sites.log10_extent_as_written),
+        extent(sites.log10_extent_after_noise),
         extent(sites.log10_extent)
     )?;
     for (index, costly) in plan.costliest.iter().take(3).enumerate() {
@@ -96,8 +110,9 @@ fn profile(active: &Profile, out: &mut String) -> std::fmt::Result {
     let most = if active.exact { "" } else { "up to " };
     writeln!(
         out,
-        "active      {most}{} qubits at once{}",
+        "active      {most}{} {} at once{}",
         active.peak,
+        if active.peak == 1 { "qubit" } else { "qubits" },
         if active.exact {
             ""
         } else {
@@ -355,7 +370,7 @@ pub fn refusal(refusal: &Refusal, costliest: &[Costly], shots: u64) -> String {
             "\n  fewer shots help: there is time for about {count} with δ = 1"
         );
     }
-    if !costliest.is_empty() && refusal.log10_extent.is_some() {
+    if !costliest.is_empty() && refusal.terms {
         text.push_str(
             "\n  noise on a gate lowers its extent (1 % dephasing takes a t from 1.1716 to 1.1599, \
              5 % to 1.1130); a ccx or ccz as one gate has extent 1.78, as 7 t gates 3.03",

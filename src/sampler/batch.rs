@@ -25,6 +25,12 @@ const MOST_SHOTS: u64 = 1 << 14;
 /// what is past that.
 const CHUNKS_AHEAD: u64 = 2;
 
+/// Shots drawn and not yet handed on at most, where one takes a thread so long.
+pub fn most_in_flight(seconds_a_shot: f64, threads: usize) -> f64 {
+    let chunk = (CHUNK_SECONDS / seconds_a_shot.max(1e-12)).clamp(1.0, MOST_SHOTS as f64);
+    (CHUNKS_AHEAD as f64 + 1.0) * threads as f64 * chunk
+}
+
 /// Finished shots in order of their index.
 #[derive(Debug, Clone, Default, PartialEq)]
 pub struct Block {

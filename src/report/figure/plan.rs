@@ -8,8 +8,10 @@ use super::svg::{Anchor, Shape, Svg, shortened, width_of};
 
 const WIDTH: f64 = 680.0;
 const HEIGHT: f64 = 440.0;
-const LEFT: f64 = 92.0;
-const RIGHT: f64 = 650.0;
+const LEFT: f64 = 112.0;
+const RIGHT: f64 = 656.0;
+/// Left end of title and legend.
+const MARGIN: f64 = 24.0;
 const TOP: f64 = 96.0;
 const BOTTOM: f64 = 380.0;
 
@@ -29,7 +31,7 @@ pub fn plan_figure(plan: &Plan) -> String {
     let sampled = sampled_word(plan);
     svg.text(
         "title",
-        (LEFT, 26.0),
+        (MARGIN, 26.0),
         Anchor::Start,
         &shortened(&format!("{}: {shots} shots", plan.circuit), 66),
     );
@@ -69,8 +71,8 @@ pub fn plan_figure(plan: &Plan) -> String {
         .fold(1.0, f64::max);
     let x = Scale::log(least, most, LEFT, RIGHT);
     let y = Scale::log(low, high, BOTTOM, TOP);
-    limit_of_memory(plan, &x, &mut svg);
     axes(&x, &y, &mut svg);
+    limit_of_memory(plan, &x, &mut svg);
     let mut legend = Legend::new();
     if !curve.is_empty() {
         let points: Vec<(f64, f64)> = curve
@@ -155,16 +157,34 @@ fn limit_of_memory(plan: &Plan, x: &Scale, svg: &mut Svg) {
     let limit = plan.limits.memory_bytes as f64;
     // δ falls along the curve.
     let over = plan.curve.iter().find(|point| point.memory_bytes > limit);
-    let Some(first) = over else { return };
+    let Some(first) = over else {
+        let limit = bytes(u128::from(plan.limits.memory_bytes));
+        let text = format!("all within {limit} of memory");
+        svg.text(
+            "small halo",
+            (LEFT + 8.0, BOTTOM - 10.0),
+            Anchor::Start,
+            &text,
+        );
+        return;
+    };
     let edge = x.at(first.delta);
     svg.rectangle("shade", (LEFT, TOP), (edge, BOTTOM));
-    let text = format!("more than {}", bytes(u128::from(plan.limits.memory_bytes)));
+    let text = format!(
+        "more than {} of memory",
+        bytes(u128::from(plan.limits.memory_bytes))
+    );
     if edge - LEFT > width_of(&text) + 12.0 {
-        svg.text("small", (LEFT + 8.0, BOTTOM - 10.0), Anchor::Start, &text);
+        svg.text(
+            "small halo",
+            (LEFT + 8.0, BOTTOM - 10.0),
+            Anchor::Start,
+            &text,
+        );
     } else {
         // No room inside: beside it.
         svg.text(
-            "small",
+            "small halo",
             (edge + 8.0, BOTTOM - 10.0),
             Anchor::Start,
             &format!("← {text}"),
@@ -195,15 +215,15 @@ struct Legend {
 impl Legend {
     fn new() -> Self {
         Legend {
-            at: LEFT,
+            at: MARGIN,
             row: 52.0,
         }
     }
 
     fn entry(&mut self, svg: &mut Svg, line: &str, mark: Option<(&str, Shape)>, name: &str) {
         let width = 42.0 + width_of(name) + 14.0;
-        if self.at + width > WIDTH && self.at > LEFT {
-            self.at = LEFT;
+        if self.at + width > WIDTH && self.at > MARGIN {
+            self.at = MARGIN;
             self.row += 22.0;
         }
         let middle = self.row - 4.5;

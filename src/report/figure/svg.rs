@@ -198,7 +198,7 @@ fn anchor_word(anchor: Anchor) -> &'static str {
 
 /// About how wide a text is in pixels at 13 pixels; for layout, never exact.
 pub(super) fn width_of(text: &str) -> f64 {
-    6.9 * text.chars().count() as f64
+    6.8 * text.chars().count() as f64
 }
 
 /// At most `most` characters, the middle left out where there are more.
