@@ -61,7 +61,7 @@ class Laws(unittest.TestCase):
         """All circuits of the mixing law, damping of entangled qubits included,
         where the trace of the companion enters λ. Where the program found fewer
         sites than were written (smaller extent), its companion is another one, and
-        only the tests count."""
+        only the tests count; where it differs from path to path it is refused."""
         compared = 0
         shots = 5000
         possible = np.arange(shots + 1)
@@ -73,6 +73,8 @@ class Laws(unittest.TestCase):
                     report, result = verify_circuit(
                         law.circuit, "--shots", shots, "--terms", terms, "--readout", "walk",
                         "--seed", 300 + index, check=False)
+                    if result.returncode == 2 and "path to path" in result.stderr:
+                        continue
                     self.assertEqual(result.returncode, 0, result.stderr)
                     self.check_tests(report)
                     self.assertLess(report["extent"], law.extent + 1e-8)
