@@ -167,7 +167,9 @@ fn between(low: &Rung, high: &Rung, terms: f64) -> f64 {
     let share = (terms / low.terms as f64).ln() / (high.terms as f64 / low.terms as f64).ln();
     let (low, high) = (low.timing.seconds, high.timing.seconds);
     // Rounding must not lead out of the two.
-    (low.ln() + share * (high / low).ln()).exp().clamp(low, high)
+    (low.ln() + share * (high / low).ln())
+        .exp()
+        .clamp(low, high)
 }
 
 /// Numbers of terms to measure at, ascending: from `least` to `most` by about
