@@ -5,9 +5,10 @@
 //!   the caches hold, with one thread and with two.
 //! * `count_ones`: 64-bit words counted per second, from a block in the first
 //!   cache.
-//! * `primitive`: nanoseconds of (1 + i^a·Q)/√2 on one term, random unitary Q,
-//!   the terms together in the second cache or far beyond all caches, and the
-//!   bytes a term takes.
+//! * `primitive`: nanoseconds of (1 + i^a·Q)/√2 on one term, random unitary Q, the
+//!   terms together in the second cache or far beyond all caches, and the bytes a
+//!   term takes. As `walk` does it: one pass that does a primitive and sums the
+//!   amplitudes for the next.
 //!
 //! All are the best of several rounds taken in turns, so that a busy machine
 //! disturbs them alike.
@@ -18,9 +19,9 @@ use std::time::Instant;
 use num_complex::Complex64;
 use rand::{RngExt, SeedableRng};
 use rand_pcg::Pcg64Mcg;
-use shottower::clifford::terms::Terms;
+use shottower::clifford::terms::{Candidate, Planes, Resolved, Terms};
 
-const ROUNDS: usize = 15;
+const ROUNDS: usize = 25;
 /// Words of the block that is copied, a thread: 256 MiB.
 const COPY_WORDS: usize = 1 << 25;
 /// Words of the block that is counted: 16 KiB.
@@ -32,7 +33,7 @@ const MANY: usize = 200_000;
 /// Bytes of all terms that fit a second cache with room to spare.
 const SECOND_CACHE: usize = 1 << 19;
 /// Terms that one round of the small case works on, over all repeats.
-const SMALL_WORK: usize = 50_000;
+const SMALL_WORK: usize = 10_000;
 
 fn seconds(work: impl FnOnce()) -> f64 {
     let start = Instant::now();
@@ -83,16 +84,19 @@ struct Case {
     slots: usize,
     terms: Terms<1>,
     rng: Pcg64Mcg,
+    next: Candidate<1>,
     repeats: usize,
     best: f64,
 }
 
 impl Case {
     fn new(slots: usize, count: usize) -> Self {
+        let mut rng = Pcg64Mcg::seed_from_u64(slots as u64);
         let mut case = Case {
             slots,
             terms: Terms::new(slots),
-            rng: Pcg64Mcg::seed_from_u64(slots as u64),
+            next: Self::candidate(slots, &mut rng),
+            rng,
             repeats: (SMALL_WORK / count).max(1),
             best: f64::INFINITY,
         };
@@ -104,20 +108,38 @@ impl Case {
             let powers: Vec<u8> = (0..count).map(|_| case.rng.random()).collect();
             let slot = case.rng.random_range(0..slots);
             case.terms.diagonal(slot, |label| powers[label as usize]);
-            case.primitive();
+            let Candidate { phase, x, z } = Self::candidate(slots, &mut case.rng);
+            case.terms.primitive(phase, &x, &z);
         }
+        // A pass does the primitive that the pass before looked at.
+        case.terms.sweep(None, &[], Planes::NONE, Some(case.next));
         case
     }
 
-    /// A random (1 + i^a·Q)/√2 with Q² = −1, which keeps every term.
-    fn primitive(&mut self) {
-        let all = (1 << self.slots) - 1;
-        let (x, z) = (
-            self.rng.random::<u64>() & all,
-            self.rng.random::<u64>() & all,
-        );
+    /// A random (1 + i^a·Q)/√2 with Q² = −1 and an X part.
+    fn candidate(slots: usize, rng: &mut Pcg64Mcg) -> Candidate<1> {
+        let all = (1 << slots) - 1;
+        let x = (rng.random::<u64>() & all).max(1);
+        let z = rng.random::<u64>() & all;
         let phase = ((x & z).count_ones() + 1) & 1;
-        self.terms.primitive(phase as u8, &[x], &[z]);
+        Candidate {
+            phase: phase as u8,
+            x: [x],
+            z: [z],
+        }
+    }
+
+    /// The primitive that is due, and the sums for one to come.
+    fn primitive(&mut self) {
+        let due = Resolved {
+            candidate: self.next,
+            moved: self.rng.random(),
+        };
+        self.next = Self::candidate(self.slots, &mut self.rng);
+        black_box(
+            self.terms
+                .sweep(Some(due), &[], Planes::NONE, Some(self.next)),
+        );
     }
 
     fn round(&mut self) {

@@ -3,9 +3,10 @@
 use std::path::Path;
 
 use shottower::report::Summary;
-use shottower::sampler::Rows;
+use shottower::sampler::{NormAudit, Rows};
 use shottower::store::{
-    AuditBlock, Finished, Header, Part, RegisterHeader, ShotFile, SiteRow, Writer, WriterOptions,
+    AuditBlock, Finished, Header, Part, ReductionHeader, RegisterHeader, ShotFile, SiteRow, Writer,
+    WriterOptions,
 };
 
 fn register(name: &str, role: &str, width: usize) -> RegisterHeader {
@@ -81,10 +82,25 @@ fn write(path: &Path, change: impl FnOnce(&mut Header)) -> ShotFile {
         attempts: (0..100).map(|shot| 1 + shot % 2).collect(),
         peak_active: (0..100).map(|shot| shot % 8).collect(),
         terms_left: vec![4; 100],
-        norm: vec![1.5; 100],
     };
     writer.append_audit(&audit).unwrap();
-    writer.finish(Finished { clipped: 2 }).unwrap();
+    // ξ = 3, k = 7: 1 + 2/7 expected. By hand: 32 times each of 1 and 1.5 have the
+    // mean 1.25 and the standard error 0.25·√(64/63)/8 = 0.031497.
+    let audit = NormAudit {
+        shots: (0..64).collect(),
+        estimates: (0..64)
+            .map(|shot| 1.0 + 0.5 * f64::from(shot % 2))
+            .collect(),
+        log_extent: 3f64.ln(),
+        terms: 7,
+        probes: 16,
+    };
+    writer.write_norms(&audit).unwrap();
+    let finished = Finished {
+        clipped: 2,
+        damped: None,
+    };
+    writer.finish(finished).unwrap();
     ShotFile::open(path).unwrap()
 }
 
@@ -110,26 +126,69 @@ shots       100, 50 companion shots
 seed        42
 settings    absorb=on
 sampling    at most 7 active qubits, 1.5 draws a shot, 2 shots clipped
+norm check  mean 1.250 ± 0.031 of 64 draws, 1.286 expected: as it should be
 
-syndrome (check, 4 bits)  as drawn                corrected
-  any nonzero             0.300 ± 0.046           0.250 ± 0.077
-  mean weight             0.600 ± 0.092           0.50 ± 0.15
+syndrome (check, 4 bits)  as drawn           companion          corrected
+  any nonzero             0.300 ± 0.046      0.400 ± 0.069      0.250 ± 0.077
+  mean weight             0.600 ± 0.092      0.80 ± 0.14        0.50 ± 0.15
+  bit 0 is 1              0 (< 3.0e-2)       0 (< 5.8e-2)       0.000 ± 0.018
+  bit 1 is 1              0.300 ± 0.046      0.400 ± 0.069      0.250 ± 0.077
+  bit 2 is 1              0 (< 3.0e-2)       0 (< 5.8e-2)       0.000 ± 0.018
+  bit 3 is 1              0.300 ± 0.046      0.400 ± 0.069      0.250 ± 0.077
 
-answer (logical, 2 bits)  as drawn                corrected
-  bit 0 is 1              0.600 ± 0.049           0.700 ± 0.081
-  bit 1 is 1              0 (< 3.0e-2)            0.000 ± 0.018
+answer (logical, 2 bits)  as drawn           companion          corrected
+  any nonzero             0.600 ± 0.049      0.400 ± 0.069      0.700 ± 0.081
+  bit 0 is 1              0.600 ± 0.049      0.400 ± 0.069      0.700 ± 0.081
+  bit 1 is 1              0 (< 3.0e-2)       0 (< 5.8e-2)       0.000 ± 0.018
 
-out (record, 3 bits)      as drawn                corrected
-  101                     0.500 ± 0.050           0.650 ± 0.080
-  011                     0.400 ± 0.049           0.200 ± 0.079
-  000                     0.100 ± 0.030           0.150 ± 0.046
+out (record, 3 bits)      as drawn           companion          corrected
+  101                     0.500 ± 0.050      0.200 ± 0.057      0.650 ± 0.080
+  011                     0.400 ± 0.049      0.800 ± 0.057      0.200 ± 0.079
+  000                     0.100 ± 0.030      0 (< 5.8e-2)       0.150 ± 0.046
 
 ± is one standard error; (< or >) is a 95 % limit.
 Outcomes are written with bit 0 on the right.
-Corrected: the companion's share λ taken out.
+Corrected: (as drawn - λ·companion)/(1 - λ), errors of both propagated.
 ";
     assert_eq!(text, expected);
     assert!(text.lines().all(|line| line.chars().count() <= 80));
+}
+
+/// What came of the non-Clifford gates, where the file tells.
+#[test]
+fn what_came_of_the_sites() {
+    let folder = tempfile::tempdir().unwrap();
+    let path = folder.path().join("bench.h5");
+    let file = write(&path, |header| {
+        header.reduction = Some(ReductionHeader {
+            log_extent_as_written: 9f64.ln(),
+            log_extent_after_noise: 5f64.ln(),
+            sites_as_written: 12,
+            sites_merged: 4,
+            sites_deterministic: 1,
+            sites_unobservable: 5,
+        });
+    });
+    let summary = Summary::from_file(&file).unwrap();
+    let text = summary.to_string();
+    for line in [
+        "sites       2 left of 12 non-Clifford gates\n",
+        "reduced     4 merged, 1 on a known axis, 5 unobservable\n",
+        "extent ξ    9.0000 as written, 5.0000 with noise merged, 3.0000 in this run\n",
+    ] {
+        assert!(text.contains(line), "{text}");
+        assert!(line.chars().count() <= 82, "{line}");
+    }
+    let json: serde_json::Value = serde_json::from_str(&summary.to_json()).unwrap();
+    let reduction = &json["sites"]["reduction"];
+    assert_eq!(reduction["as_written"], 12);
+    assert_eq!(reduction["merged"], 4);
+    assert_eq!(reduction["deterministic"], 1);
+    assert_eq!(reduction["unobservable"], 5);
+    let log10 = reduction["log10_extent_as_written"].as_f64().unwrap();
+    assert!((log10 - 9f64.log10()).abs() < 1e-12);
+    let log10 = reduction["log10_extent_after_noise"].as_f64().unwrap();
+    assert!((log10 - 5f64.log10()).abs() < 1e-12);
 }
 
 #[test]
@@ -146,6 +205,12 @@ fn json_for_a_program() {
     close("/shots", 100.0);
     close("/companion_shots", 50.0);
     close("/clipped", 2.0);
+    close("/norm/mean", 1.25);
+    close("/norm/standard_error", 0.25 * (64.0f64 / 63.0).sqrt() / 8.0);
+    close("/norm/expected", 9.0 / 7.0);
+    let error = 0.25 * (64.0f64 / 63.0).sqrt() / 8.0;
+    close("/norm/deviation", (1.25 - 9.0 / 7.0) / error);
+    assert_eq!(json["norm"]["accepted"], true);
     close("/draws/mean_attempts", 1.5);
     close("/draws/peak_active", 7.0);
     close("/draws/mean_terms_left", 4.0);
@@ -177,6 +242,40 @@ fn json_for_a_program() {
     assert_eq!(json["complete"], true);
     assert_eq!(json["title"], "bench B");
     assert_eq!(json["settings"][0][1], "on");
+}
+
+/// 64 estimates of mean 1.25 ± 0.031 where 9/7 or 2 are expected, and of too few.
+#[test]
+fn a_wrong_norm_is_told_plainly() {
+    let folder = tempfile::tempdir().unwrap();
+    let shown = |name: &str, log_extent: f64, count: u32| {
+        let path = folder.path().join(name);
+        let header = Header {
+            terms: Some(7),
+            mixing_weight: 0.5,
+            ..Header::default()
+        };
+        let mut writer = Writer::create(&path, &header, WriterOptions::default()).unwrap();
+        let estimate = |shot: u32| 1.0 + 0.5 * f64::from(shot % 2);
+        let audit = NormAudit {
+            shots: (0..u64::from(count)).collect(),
+            estimates: (0..count).map(estimate).collect(),
+            log_extent,
+            terms: 7,
+            probes: 16,
+        };
+        writer.write_norms(&audit).unwrap();
+        writer.finish(Finished::default()).unwrap();
+        let file = ShotFile::open(&path).unwrap();
+        Summary::from_file(&file).unwrap().to_string()
+    };
+    let right = shown("right.h5", 3f64.ln(), 64);
+    assert!(right.contains("1.286 expected: as it should be"), "{right}");
+    let wrong = shown("wrong.h5", 8f64.ln(), 64);
+    assert!(wrong.contains("2 expected: WRONG"), "{wrong}");
+    assert!(wrong.contains("23.8 standard errors"), "{wrong}");
+    let few = shown("few.h5", 8f64.ln(), 8);
+    assert!(few.contains("too few to tell"), "{few}");
 }
 
 #[test]

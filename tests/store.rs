@@ -2,10 +2,10 @@
 
 use std::path::Path;
 
-use shottower::sampler::{Family, FaultEvent, Rows};
+use shottower::sampler::{Family, FaultEvent, NormAudit, Rows};
 use shottower::store::{
-    AuditBlock, Finished, Header, LocationRow, Part, ReductionHeader, RegisterHeader, ShotFile,
-    SiteRow, StoreError, Writer, WriterOptions,
+    AuditBlock, Damped, Finished, Header, LocationRow, Part, ReductionHeader, RegisterHeader,
+    ShotFile, SiteRow, StoreError, Writer, WriterOptions,
 };
 
 const ALL: WriterOptions = WriterOptions {
@@ -125,7 +125,6 @@ fn everything_comes_back() {
         attempts: (0..40_000).map(|i| i % 7 + 1).collect(),
         peak_active: (0..40_000).map(|i| (i % 5) as u16).collect(),
         terms_left: (0..40_000).collect(),
-        norm: (0..40_000).map(|i| f64::from(i) / 3.0).collect(),
     };
     let faults: Vec<FaultEvent> = (0..20_000)
         .map(|i| FaultEvent {
@@ -144,14 +143,35 @@ fn everything_comes_back() {
     writer.append_companion(&companion).unwrap();
     writer.append_faults(&faults).unwrap();
     assert!(!path.exists(), "the name must not be there too early");
-    writer.finish(Finished { clipped: 3 }).unwrap();
+    let norms = NormAudit {
+        shots: vec![0, 20_000],
+        estimates: vec![1.25, 0.75],
+        log_extent: 2f64.ln(),
+        terms: 8,
+        probes: 16,
+    };
+    writer.write_norms(&norms).unwrap();
+    let damped = Damped {
+        companion_trace: 1.1,
+        mixing_weight: 0.125,
+    };
+    let finished = Finished {
+        clipped: 3,
+        damped: Some(damped),
+    };
+    writer.finish(finished).unwrap();
 
+    let header = Header {
+        mixing_weight: 0.125,
+        ..header
+    };
     let file = ShotFile::open(&path).unwrap();
     assert_eq!(file.header(), &header);
     assert_eq!(file.program_version(), env!("CARGO_PKG_VERSION"));
     assert_eq!(file.rows(Family::Shots), Some(40_000));
     assert_eq!(file.rows(Family::Companion), Some(17));
     assert_eq!(file.clipped(), 3);
+    assert_eq!(file.norm_audit().unwrap(), Some(norms));
     assert_eq!(gather(&file, Family::Shots), shots);
     assert_eq!(gather(&file, Family::Companion), companion);
     assert_eq!(file.audit(0..usize::MAX).unwrap(), audit);

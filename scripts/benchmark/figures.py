@@ -2,7 +2,7 @@
 
 from dataclasses import asdict, dataclass, field
 
-WIDTHS = (13, 66, 14, 40)
+WIDTHS = (12, 72, 14, 42)
 HEADINGS = ("part", "figure", "asked", "measured")
 
 

@@ -231,7 +231,7 @@ fn file_costs(
         for block in some(blocks, shots) {
             run::append(&mut writer, block, false)?;
         }
-        writer.finish(Finished { clipped: 0 })?;
+        writer.finish(Finished::default())?;
         let file = ShotFile::open(&options.out)?;
         let summary = Summary::from_file(&file)?;
         std::hint::black_box(summary.to_string().len());

@@ -9,11 +9,12 @@ use crate::magic::mixing::log_extent;
 use crate::plan::auto::{self, Work};
 use crate::program::Program;
 use crate::readout::choice::{Choice, Readout, TermCount, Wish};
+use crate::readout::walk;
 use crate::report::Summary;
-use crate::sampler::{Block, Drive};
+use crate::sampler::{Block, Drive, audit};
 use crate::store::{
-    AuditBlock, Finished, Header, Part, ReductionHeader, RegisterHeader, ShotFile, StoreError,
-    Writer, WriterOptions,
+    AuditBlock, Damped, Finished, Header, Part, ReductionHeader, RegisterHeader, ShotFile,
+    StoreError, Writer, WriterOptions,
 };
 
 use super::CommandError;
@@ -142,6 +143,8 @@ pub(super) struct Job<'a> {
     companion: std::ops::Range<u64>,
     finished: Cell<u64>,
     clipped: Cell<u64>,
+    /// Companion shots, and how often they were drawn.
+    companion_drawn: Cell<(u64, u64)>,
 }
 
 impl<'a> Job<'a> {
@@ -225,6 +228,7 @@ impl<'a> Job<'a> {
             companion: part.shots(companion),
             finished: Cell::new(0),
             clipped: Cell::new(0),
+            companion_drawn: Cell::new((0, 0)),
         })
     }
 
@@ -237,8 +241,10 @@ impl<'a> Job<'a> {
         let drawn = self
             .draw_companion(program, options, &mut writer)
             .and_then(|()| self.draw_shots(program, options, &mut writer));
+        let drawn = drawn.and_then(|()| self.draw_audit(program, &mut writer));
         let finished = Finished {
             clipped: self.clipped.get(),
+            damped: self.damped(program),
         };
         match drawn {
             Ok(()) => writer.finish(finished)?,
@@ -274,7 +280,14 @@ impl<'a> Job<'a> {
             return Ok(());
         }
         let sparsifier = Sparsifier::new(program.sites());
-        let write = |block: &Block| Ok::<_, CommandError>(writer.append_companion(&block.rows)?);
+        let write = |block: &Block| -> Result<(), CommandError> {
+            let attempts = block.audit.iter().map(|shot| u64::from(shot.attempts));
+            let (shots, sum) = self.companion_drawn.get();
+            let sum = sum + attempts.sum::<u64>();
+            self.companion_drawn
+                .set((shots + block.rows.shots as u64, sum));
+            Ok(writer.append_companion(&block.rows)?)
+        };
         let total = self.companion.end - self.companion.start;
         let mut progress = Shown::new("companion", total, options.quiet);
         self.drive(program, &sparsifier, false).companion(
@@ -285,6 +298,40 @@ impl<'a> Job<'a> {
         )?;
         progress.finish();
         Ok(())
+    }
+
+    /// Audits the norm of some draws; after an interruption there is none.
+    fn draw_audit(&self, program: &Program, writer: &mut Writer) -> Result<(), CommandError> {
+        let Some(terms) = self.choice.terms else {
+            return Ok(());
+        };
+        let total = self.header.shots_total;
+        let indices = audit::Audited {
+            count: audit::audited(program, &self.choice, total),
+            total,
+            range: self.shots.clone(),
+        };
+        let sparsifier = Sparsifier::new(program.sites());
+        let found = audit::norm_audit(program, &sparsifier, self.seed, terms, indices, &INTERRUPT)?;
+        Ok(writer.write_norms(&found)?)
+    }
+
+    /// What damping of entangled qubits makes of λ, from how many companion
+    /// draws were kept.
+    fn damped(&self, program: &Program) -> Option<Damped> {
+        let terms = self.choice.terms?;
+        let (shots, attempts) = self.companion_drawn.get();
+        if !program.has_damping() || shots == 0 {
+            return None;
+        }
+        let settings = walk::Settings::new(program.sites(), 1, program.log_damping_trace());
+        let companion_trace = settings.trace(shots, attempts);
+        let log_extent = self.header.log_extent + companion_trace.ln();
+        let ideal = (terms as f64 - 1.0) * (-log_extent).exp();
+        Some(Damped {
+            companion_trace,
+            mixing_weight: 1.0 / (1.0 + ideal),
+        })
     }
 
     fn drive<'p>(

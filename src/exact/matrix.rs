@@ -184,7 +184,7 @@ impl Density {
         self.build(self.len(), |index, old| {
             let mut sum = old[index] * rest;
             for (word, probability) in words {
-                let from = index ^ 3 * word.x;
+                let from = index ^ (3 * word.x);
                 sum += signed(odd(from & (3 * word.z)), old[from]) * *probability;
             }
             sum

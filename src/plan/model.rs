@@ -5,7 +5,7 @@ use crate::program::Program;
 use crate::readout::choice::{self, Choice, ChoiceError, Readout, TermCount, Wish};
 use crate::readout::probe::{MIN_PROBES, probes_for};
 
-use crate::sampler::batch::{BATCH_MOST, BATCH_SECONDS};
+use crate::sampler::batch::most_in_flight;
 
 use super::bare::Bare;
 use super::probe::ProbeCost;
@@ -284,12 +284,9 @@ impl Model<'_> {
     }
 }
 
-/// Shots that wait to be written at once: a batch.
+/// Shots that wait to be written at once.
 fn in_flight(shots: u64, seconds_a_shot: f64, threads: usize) -> f64 {
-    let most = (4 * threads) as f64 * BATCH_MOST as f64;
-    (BATCH_SECONDS / seconds_a_shot.max(1e-12))
-        .min(most)
-        .min(shots as f64)
+    most_in_flight(seconds_a_shot * threads as f64, threads).min(shots as f64)
 }
 
 /// Bytes of one term as counted from its fields.

@@ -3,7 +3,8 @@
 //! A [`Register`] follows the steps of a compiled program on the active qubits.
 //! [`dense`] holds all amplitudes of one drawn member exactly; [`probe`] holds
 //! stabiliser terms and measures by fast norm estimation; [`walk`] holds terms
-//! and one sample of the basis that walks with the circuit. The loop over steps
+//! and one sample of the basis that walks with the circuit; [`norm`] holds terms
+//! to audit the norm of their sum, and reads nothing out. The loop over steps
 //! is not here: one loop drives every register.
 //!
 //! This module knows sites, terms and primitives, and nothing of circuits,
@@ -11,6 +12,7 @@
 
 pub mod choice;
 pub mod dense;
+pub mod norm;
 pub mod probe;
 pub mod walk;
 
@@ -101,8 +103,6 @@ pub struct Diagnostics {
     pub terms_left: u32,
     /// Whether an acceptance ratio had to be clipped to 1.
     pub clipped: bool,
-    /// Estimate of ‖Ω‖² at the first inner measurement, if one was made.
-    pub norm: Option<f64>,
 }
 
 /// A flag that asks running work to stop at the next shot.

@@ -167,11 +167,24 @@ impl<'p, const W: usize> Probe<'p, W> {
         None
     }
 
+    /// Estimate of ‖Ω‖², from the two projections of `slot` or of any active slot;
+    /// none if interrupted. Nothing is accepted and nothing changes.
+    pub(super) fn norm(&mut self, slot: Option<u16>, rng: &mut ShotRng) -> Option<f64> {
+        if self.terms.is_empty() {
+            return Some(0.0);
+        }
+        let active = (0..).zip(self.active).find(|&(_, word)| word != 0);
+        let first = active.map(|(word, bits)| 64 * word + bits.trailing_zeros() as u16);
+        match slot.or(first) {
+            Some(slot) => self.estimate(slot, rng).map(|[zero, one]| zero + one),
+            None => Some(self.terms.total_amplitude(&[0; W]).norm_sqr()),
+        }
+    }
+
     /// Keeps the shot with probability norm/(mean·cap).
     fn accept(&mut self, norm: f64, rng: &mut ShotRng) -> bool {
         self.accepted = true;
         let relative = norm / mean_norm(self.log_extent, self.weights.len() as u64);
-        self.diagnostics.norm = Some(norm);
         self.diagnostics.clipped = relative > self.settings.cap * (1.0 + 1e-9);
         rng.random::<f64>() * self.settings.cap < relative
     }

@@ -22,6 +22,8 @@
 //!                             "log10_extent_after_noise" },
 //!              "log10_extent_without_noise", "log10_extent", "extent" },
 //!   "draws": { "mean_attempts", "peak_active", "mean_terms_left" },
+//!   "norm": { "estimates", "mean", "standard_error", "expected", "deviation",
+//!             "accepted" },
 //!   "settings": [[name, value], …],
 //!   "registers": [
 //!     { "name", "role", "width",
@@ -44,6 +46,12 @@
 //! count them. `corrected` is explained at [`estimate`]; it is `null` without
 //! companion shots and where there is nothing to correct.
 //!
+//! `norm` is the norm audit: the mean estimate of ‖Ω‖² over some draws of the
+//! run, 1 + (ξ − 1)/k expected (ξ of the sites before the first measurement of
+//! an active qubit), its deviation in standard errors, and whether that is at
+//! most 5; `accepted` is `null` with fewer than 32 estimates, `norm` for exact
+//! runs.
+//!
 //! This module knows result files, and nothing of how shots are drawn.
 
 pub mod estimate;
@@ -57,7 +65,9 @@ mod verification;
 
 pub use estimate::{Estimate, Sample};
 pub use number::format_extent;
-pub use summary::{Draws, Outcome, Quantity, Reduction, RegisterSummary, Sites, Summary};
+pub use summary::{
+    Draws, NormCheck, Outcome, Quantity, Reduction, RegisterSummary, Sites, Summary,
+};
 pub use verification::{
     Corrected, Distances, Drawn, LIMIT, LawTest, Setting, Verification, allowed_bias,
 };

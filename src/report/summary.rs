@@ -4,7 +4,7 @@ use serde::Serialize;
 
 use super::estimate::{Estimate, Sample, corrected};
 use super::tally::{Tally, Words};
-use crate::sampler::Family;
+use crate::sampler::{Family, NormAudit};
 use crate::store::{Header, Part, ReductionHeader, RegisterHeader, ShotFile, SiteRow, StoreError};
 
 /// Most outcomes of a register that are listed.
@@ -53,6 +53,8 @@ pub struct Summary {
     pub sites: Sites,
     /// Averages of the per-shot diagnostics; absent without shots.
     pub draws: Option<Draws>,
+    /// The norm audit; absent where no draw was audited.
+    pub norm: Option<NormCheck>,
     /// Settings as name and value.
     pub settings: Vec<(String, String)>,
     /// The registers, in file order.
@@ -183,6 +185,7 @@ impl Summary {
             mixing_weight: header.mixing_weight,
             sites: Sites::of(header),
             draws: Draws::of(file)?,
+            norm: file.norm_audit()?.as_ref().and_then(NormCheck::of),
             settings: header.settings.clone(),
             registers: registers(file)?,
         })
@@ -266,6 +269,64 @@ impl Draws {
             peak_active: peak,
             mean_terms_left: terms as f64 / shots as f64,
         }))
+    }
+}
+
+/// Standard errors from which on a norm is not as expected. With 32 estimates or
+/// more that happens by chance about once in 50,000 runs (t-distribution of 31
+/// degrees of freedom, two-sided: 2.1e-5).
+const MOST_DEVIATION: f64 = 5.0;
+
+/// Fewest estimates whose own spread is good enough for a verdict.
+const FEWEST_ESTIMATES: usize = 32;
+
+/// The mean of the audited norms against 1 + (ξ − 1)/k.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+pub struct NormCheck {
+    /// Number of audited draws.
+    pub estimates: u64,
+    /// Mean of their estimates of ‖Ω‖².
+    pub mean: f64,
+    /// Its standard error; absent with a single estimate.
+    pub standard_error: Option<f64>,
+    /// What it should be.
+    pub expected: f64,
+    /// (mean − expected) in standard errors; absent where there is no spread.
+    pub deviation: Option<f64>,
+    /// Whether the mean is as expected; absent where there are too few
+    /// estimates to say.
+    pub accepted: Option<bool>,
+}
+
+impl NormCheck {
+    /// `None` without estimates.
+    fn of(audit: &NormAudit) -> Option<Self> {
+        let count = audit.estimates.len();
+        if count == 0 {
+            return None;
+        }
+        let number = count as f64;
+        let mean = audit.estimates.iter().sum::<f64>() / number;
+        let squares: f64 = audit.estimates.iter().map(|x| (x - mean).powi(2)).sum();
+        let standard_error = (count > 1).then(|| (squares / (number - 1.0) / number).sqrt());
+        let expected = audit.expected();
+        // One term has the same norm in every draw, but for rounding.
+        let rounding = 1e-9 * expected;
+        let deviation = standard_error
+            .filter(|&error| error > rounding)
+            .map(|error| (mean - expected) / error);
+        let close = match deviation {
+            Some(deviation) => deviation.abs() <= MOST_DEVIATION,
+            None => (mean - expected).abs() <= rounding,
+        };
+        Some(NormCheck {
+            estimates: count as u64,
+            mean,
+            standard_error,
+            expected,
+            deviation,
+            accepted: (count >= FEWEST_ESTIMATES).then_some(close),
+        })
     }
 }
 

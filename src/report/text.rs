@@ -2,15 +2,18 @@
 
 use std::fmt::{self, Display, Formatter};
 
+use super::Estimate;
 use super::number::{format_estimate, format_extent, format_plain};
-use super::summary::{Outcome, Quantity, Reduction, RegisterSummary, Summary};
+use super::summary::{NormCheck, Outcome, Quantity, Reduction, RegisterSummary, Summary};
 
 /// Most bits of a register that are listed one by one.
 const MOST_BITS: usize = 16;
 /// Outcomes of wider registers are printed in hexadecimal.
 const MOST_BINARY_DIGITS: usize = 28;
+/// Width of a column of numbers.
+const COLUMN: usize = 17;
 /// Least width of the column of names.
-const LEAST_LABEL: usize = 24;
+const LEAST_LABEL: usize = 22;
 
 impl Display for Summary {
     fn fmt(&self, out: &mut Formatter<'_>) -> fmt::Result {
@@ -25,6 +28,9 @@ impl Display for Summary {
             )?;
         }
         line(out, "sites", &self.sites_line())?;
+        if let Some(reduced) = self.reduced_line() {
+            line(out, "reduced", &reduced)?;
+        }
         line(out, "extent ξ", &self.extent_line())?;
         line(out, "precision", &self.precision())?;
         line(out, "shots", &self.shots_line())?;
@@ -51,6 +57,9 @@ impl Display for Summary {
             }
             line(out, "sampling", &text)?;
         }
+        if let Some(norm) = &self.norm {
+            line(out, "norm check", &norm.to_string())?;
+        }
         let labels = self
             .registers
             .iter()
@@ -60,6 +69,40 @@ impl Display for Summary {
             self.register(out, register, label)?;
         }
         self.notes(out)
+    }
+}
+
+impl Display for NormCheck {
+    fn fmt(&self, out: &mut Formatter<'_>) -> fmt::Result {
+        let mean = Estimate {
+            value: self.mean,
+            standard_error: self.standard_error.unwrap_or(0.0),
+            limit_95: None,
+        };
+        let draws = match self.estimates {
+            1 => "1 draw".to_owned(),
+            estimates => format!("{estimates} draws"),
+        };
+        write!(
+            out,
+            "mean {} of {draws}, {} expected: ",
+            format_estimate(&mean),
+            format_plain(self.expected)
+        )?;
+        match (self.accepted, self.deviation) {
+            (None, _) => write!(out, "too few to tell"),
+            (Some(true), _) => write!(out, "as it should be"),
+            (Some(false), deviation) => {
+                let far = match deviation {
+                    Some(deviation) => format!("{:.1} standard errors", deviation.abs()),
+                    None => "more than rounding".to_owned(),
+                };
+                write!(
+                    out,
+                    "WRONG\n            by {far}: the shots do not follow their law, do not use them"
+                )
+            }
+        }
     }
 }
 
@@ -81,25 +124,9 @@ impl Summary {
 
     fn sites_line(&self) -> String {
         if let Some(reduction) = &self.sites.reduction {
-            let Reduction {
-                as_written,
-                merged,
-                deterministic,
-                unobservable,
-                ..
-            } = reduction;
-            let gates = if *as_written == 1 { "gate" } else { "gates" };
-            let mut text = format!("{} of {as_written} non-Clifford {gates}", self.sites.kept);
-            for (count, what) in [
-                (merged, "merged"),
-                (deterministic, "deterministic"),
-                (unobservable, "unobservable"),
-            ] {
-                if *count > 0 {
-                    text += &format!(", {count} {what}");
-                }
-            }
-            return text;
+            let gates = reduction.as_written;
+            let noun = if gates == 1 { "gate" } else { "gates" };
+            return format!("{} left of {gates} non-Clifford {noun}", self.sites.kept);
         }
         let count = self.sites.count;
         let places = if count == 1 { "place" } else { "places" };
@@ -107,6 +134,27 @@ impl Summary {
             0 => format!("{count} non-Clifford {places}"),
             idle => format!("{count} non-Clifford {places}, {idle} of them without effect"),
         }
+    }
+
+    /// How sites went, if any did.
+    fn reduced_line(&self) -> Option<String> {
+        let Reduction {
+            merged,
+            deterministic,
+            unobservable,
+            ..
+        } = self.sites.reduction.as_ref()?;
+        let ways = [
+            (merged, "merged"),
+            (deterministic, "on a known axis"),
+            (unobservable, "unobservable"),
+        ];
+        let ways: Vec<String> = ways
+            .iter()
+            .filter(|(count, _)| **count > 0)
+            .map(|(count, way)| format!("{count} {way}"))
+            .collect();
+        (!ways.is_empty()).then(|| ways.join(", "))
     }
 
     fn extent_line(&self) -> String {
@@ -178,15 +226,24 @@ impl Summary {
         if self.shots == 0 || register.width == 0 {
             return writeln!(out, "{title}");
         }
-        let with_correction = self.has_correction();
-        let heading = if with_correction { "corrected" } else { "" };
-        let heading = format!("{title:label$}  {:22}  {heading}", "as drawn");
+        let headings = match self.has_correction() {
+            true => ["companion", "corrected"],
+            false => ["", ""],
+        };
+        let heading = format!(
+            "{title:label$}  {:COLUMN$}  {:COLUMN$}  {}",
+            "as drawn", headings[0], headings[1]
+        );
         writeln!(out, "{}", heading.trim_end())?;
         for (name, quantity) in rows_of(register, self.shots) {
             let show =
                 |estimate| Option::as_ref(estimate).map_or_else(String::new, format_estimate);
+            let companion = match quantity.corrected {
+                Some(_) => show(&quantity.companion),
+                None => String::new(),
+            };
             let text = format!(
-                "  {name:indent$}  {:22}  {}",
+                "  {name:indent$}  {:COLUMN$}  {companion:COLUMN$}  {}",
                 show(&quantity.raw),
                 show(&quantity.corrected),
                 indent = label - 2
@@ -210,7 +267,10 @@ impl Summary {
             writeln!(out, "Outcomes are written with bit 0 on the right.")?;
         }
         if self.has_correction() {
-            writeln!(out, "Corrected: the companion's share λ taken out.")?;
+            writeln!(
+                out,
+                "Corrected: (as drawn - λ·companion)/(1 - λ), errors of both propagated."
+            )?;
         } else if self.terms == Some(1) {
             writeln!(
                 out,
@@ -240,28 +300,26 @@ fn line(out: &mut Formatter<'_>, name: &str, value: &str) -> fmt::Result {
     writeln!(out, "{name:11} {value}")
 }
 
-/// The lines of a register: checks as a whole, logical readouts bit by bit,
-/// records by their outcomes where any was seen twice.
+/// The lines of a register: checks and logical readouts of more than one bit as
+/// a whole, then bit by bit; records by their outcomes where any was seen twice,
+/// else bit by bit.
 fn rows_of(register: &RegisterSummary, shots: u64) -> Vec<(String, &Quantity)> {
-    if register.role == "check" {
-        return vec![
-            ("any nonzero".to_owned(), &register.any_nonzero),
-            ("mean weight".to_owned(), &register.mean_weight),
-        ];
-    }
-    match listed_outcomes(register, shots) {
-        Some(outcomes) => outcomes
+    if let Some(outcomes) = listed_outcomes(register, shots) {
+        return outcomes
             .iter()
             .map(|outcome| (label(outcome), &outcome.frequency))
-            .collect(),
-        None => register
-            .bits
-            .iter()
-            .take(MOST_BITS)
-            .enumerate()
-            .map(|(index, quantity)| (format!("bit {index} is 1"), quantity))
-            .collect(),
+            .collect();
     }
+    let mut rows = Vec::new();
+    if register.role != "record" && register.width > 1 {
+        rows.push(("any nonzero".to_owned(), &register.any_nonzero));
+    }
+    if register.role == "check" && register.width > 1 {
+        rows.push(("mean weight".to_owned(), &register.mean_weight));
+    }
+    let bits = register.bits.iter().take(MOST_BITS).enumerate();
+    rows.extend(bits.map(|(index, quantity)| (format!("bit {index} is 1"), quantity)));
+    rows
 }
 
 fn listed_outcomes(register: &RegisterSummary, shots: u64) -> Option<&[Outcome]> {
@@ -285,9 +343,6 @@ fn label(outcome: &Outcome) -> String {
 }
 
 fn what_is_left_out(register: &RegisterSummary, shots: u64) -> Option<String> {
-    if register.role == "check" {
-        return None;
-    }
     match listed_outcomes(register, shots) {
         Some(outcomes) => {
             let more = register.distinct_outcomes? - outcomes.len() as u64;

@@ -1,9 +1,8 @@
 //! Many shots on all threads, handed on in order.
 
-use std::sync::Mutex;
+use std::collections::BTreeMap;
+use std::sync::{Condvar, Mutex, mpsc};
 use std::time::Instant;
-
-use rayon::prelude::*;
 
 use crate::magic::{Draw, Sparsifier};
 use crate::program::Program;
@@ -16,11 +15,21 @@ use super::{Interrupt, Progress, SampleError};
 /// Most draws of one shot before giving up.
 const MAX_ATTEMPTS: u32 = 10_000_000;
 
-/// Wall time a batch of shots should take.
-pub const BATCH_SECONDS: f64 = 0.1;
+/// Wall time a chunk of shots should take.
+const CHUNK_SECONDS: f64 = 0.03;
 
-/// Most shots one thread takes from a batch at a time.
-pub const BATCH_MOST: u64 = 1 << 14;
+/// Most shots of a chunk.
+const MOST_SHOTS: u64 = 1 << 14;
+
+/// Chunks a thread may be ahead of the first unfinished one. An interruption loses
+/// what is past that.
+const CHUNKS_AHEAD: u64 = 2;
+
+/// Shots drawn and not yet handed on at most, where one takes a thread so long.
+pub fn most_in_flight(seconds_a_shot: f64, threads: usize) -> f64 {
+    let chunk = (CHUNK_SECONDS / seconds_a_shot.max(1e-12)).clamp(1.0, MOST_SHOTS as f64);
+    (CHUNKS_AHEAD as f64 + 1.0) * threads as f64 * chunk
+}
 
 /// Finished shots in order of their index.
 #[derive(Debug, Clone, Default, PartialEq)]
@@ -93,6 +102,92 @@ pub enum Drawing {
     Companion,
 }
 
+/// Which shots are drawn next, by whoever is free.
+struct Queue {
+    state: Mutex<QueueState>,
+    moved: Condvar,
+    threads: u64,
+}
+
+struct QueueState {
+    next: u64,
+    end: u64,
+    /// Everything before it has been handed on.
+    handed_on: u64,
+    /// Shots of a chunk.
+    size: u64,
+    stopped: bool,
+}
+
+impl Queue {
+    fn new(range: std::ops::Range<u64>, threads: u64) -> Self {
+        Queue {
+            state: Mutex::new(QueueState {
+                next: range.start,
+                end: range.end,
+                handed_on: range.start,
+                size: 1,
+                stopped: false,
+            }),
+            moved: Condvar::new(),
+            threads,
+        }
+    }
+
+    /// The next chunk; none if all are taken or the work is to stop. Waits while
+    /// too many chunks are under way.
+    fn take(&self, interrupt: &Interrupt) -> Option<std::ops::Range<u64>> {
+        let mut state = lock(&self.state);
+        loop {
+            if state.stopped || state.next >= state.end || interrupt.raised() {
+                return None;
+            }
+            let ahead = state.next - state.handed_on;
+            if ahead < CHUNKS_AHEAD * self.threads * state.size {
+                break;
+            }
+            state = self
+                .moved
+                .wait(state)
+                .unwrap_or_else(|poisoned| poisoned.into_inner());
+        }
+        // Small ones at the end, so that all threads finish together.
+        let share = (state.end - state.next).div_ceil(2 * self.threads);
+        let first = state.next;
+        state.next += state.size.min(share);
+        Some(first..state.next)
+    }
+
+    /// A chunk of so many shots took so long.
+    fn took(&self, shots: u64, seconds: f64) {
+        let wanted = shots as f64 * CHUNK_SECONDS / seconds.max(1e-6);
+        let mut state = lock(&self.state);
+        let most = (4 * state.size).min(MOST_SHOTS);
+        state.size = (wanted as u64).clamp(1, most);
+    }
+
+    fn handed_on(&self, next: u64) {
+        lock(&self.state).handed_on = next;
+        self.moved.notify_all();
+    }
+
+    fn stop(&self) {
+        lock(&self.state).stopped = true;
+        self.moved.notify_all();
+    }
+}
+
+/// Without it a panic of one thread would leave the others waiting.
+struct StopOnPanic<'a>(&'a Queue);
+
+impl Drop for StopOnPanic<'_> {
+    fn drop(&mut self) {
+        if std::thread::panicking() {
+            self.0.stop();
+        }
+    }
+}
+
 /// What one thread needs for a shot.
 struct Worker<'p, R> {
     machine: Machine<'p>,
@@ -142,57 +237,68 @@ impl<'p> Sampler<'p> {
         mut sink: impl FnMut(&Block) -> Result<(), E>,
     ) -> Result<u64, E>
     where
-        R: Register + Send,
+        R: Register,
         E: From<SampleError>,
     {
-        let pool: Mutex<Vec<Worker<'p, R>>> = Mutex::new(Vec::new());
         let threads = rayon::current_num_threads().max(1) as u64;
-        let mut size = 1u64;
+        let queue = Queue::new(range.clone(), threads);
+        let (sender, finished) = mpsc::channel();
+        rayon::in_place_scope(|scope| {
+            for _ in 0..threads {
+                let (sender, queue, make) = (sender.clone(), &queue, &make);
+                scope.spawn(move |_| {
+                    let _guard = StopOnPanic(queue);
+                    let mut worker = self.worker(make());
+                    while let Some(asked) = queue.take(interrupt) {
+                        let started = Instant::now();
+                        let shots = asked.end - asked.start;
+                        let block = self.block(family, asked, range.start, &mut worker, interrupt);
+                        queue.took(shots, started.elapsed().as_secs_f64());
+                        if sender.send((block, shots)).is_err() {
+                            break;
+                        }
+                    }
+                });
+            }
+            drop(sender);
+            let done = self.hand_on(&range, &queue, &finished, progress, &mut sink);
+            queue.stop();
+            done
+        })
+    }
+
+    /// Hands finished blocks on in order, until the first one that is short.
+    fn hand_on<E: From<SampleError>>(
+        &self,
+        range: &std::ops::Range<u64>,
+        queue: &Queue,
+        finished: &mpsc::Receiver<(Block, u64)>,
+        progress: &mut dyn Progress,
+        sink: &mut impl FnMut(&Block) -> Result<(), E>,
+    ) -> Result<u64, E> {
+        let mut waiting = BTreeMap::new();
         let mut next = range.start;
-        while next < range.end && !interrupt.raised() {
-            let started = Instant::now();
-            let left = range.end - next;
-            // An interruption loses what is past the first unfinished chunk: with
-            // slow shots no more than what the other threads have in hand.
-            let chunks = if size == 1 { threads } else { 4 * threads };
-            let starts: Vec<u64> = (0..chunks.min(left.div_ceil(size)))
-                .map(|chunk| next + chunk * size)
-                .collect();
-            let blocks: Vec<Block> = starts
-                .par_iter()
-                .map(|&first| {
-                    let taken = lock(&pool).pop();
-                    let mut worker = taken.unwrap_or_else(|| self.worker(make()));
-                    let shots = size.min(range.end - first);
-                    let asked = first..first + shots;
-                    let block = self.block(family, asked, range.start, &mut worker, interrupt);
-                    lock(&pool).push(worker);
-                    block
-                })
-                .collect();
-            let mut done = 0;
-            for (block, &first) in blocks.into_iter().zip(&starts) {
-                let attempts = block
-                    .audit
-                    .iter()
-                    .map(|shot| u64::from(shot.attempts))
-                    .sum();
+        while next < range.end {
+            let Ok((block, asked)) = finished.recv() else {
+                break;
+            };
+            waiting.insert(block.first, (block, asked));
+            while let Some((block, asked)) = waiting.remove(&next) {
                 sink(&block)?;
-                done += block.rows.shots as u64;
+                let shots = block.rows.shots as u64;
+                let attempts = |shot: &ShotAudit| u64::from(shot.attempts);
                 let peak = block.audit.iter().map(|shot| shot.peak_active).max();
                 progress.active(peak.unwrap_or(0));
-                progress.advance(block.rows.shots as u64, attempts);
+                progress.advance(shots, block.audit.iter().map(attempts).sum());
+                next += shots;
                 if let Some(error) = block.error {
                     return Err(error.into());
                 }
-                if (block.rows.shots as u64) < size.min(range.end - first) {
-                    return Ok(next + done - range.start);
+                if shots < asked {
+                    return Ok(next - range.start);
                 }
+                queue.handed_on(next);
             }
-            next += done;
-            let seconds = started.elapsed().as_secs_f64().max(1e-6);
-            let wanted = size as f64 * BATCH_SECONDS / seconds;
-            size = (wanted as u64).clamp(1, (4 * size).min(BATCH_MOST));
         }
         Ok(next - range.start)
     }

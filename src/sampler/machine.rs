@@ -104,18 +104,10 @@ impl<'p> Machine<'p> {
         rng: &mut ShotRng,
         interrupt: &Interrupt,
     ) -> Result<bool, SampleError> {
-        self.bits.fill(0);
-        self.events.clear();
-        self.peak_active = 0;
-        if !register.start(draw, rng) {
+        if !self.begin(register, draw, rng, interrupt)? {
             return Ok(false);
         }
-        let program = self.program;
-        self.enter(program.first(), None)?;
-        if !self.run(program.first(), register, draw, rng, interrupt) {
-            return Ok(false);
-        }
-        let mut end = program.first().clone();
+        let mut end = self.program.first().clone();
         while let End::Branch(branch) = &end.end {
             let next = self.follow(&end, branch)?;
             if !self.run(&next, register, draw, rng, interrupt) {
@@ -124,6 +116,37 @@ impl<'p> Machine<'p> {
             end = next;
         }
         Ok(register.finish(rng))
+    }
+
+    /// Runs the first segment only, and ends there. False: the register stopped
+    /// before, or does not keep what it did.
+    pub fn first_segment<R: Register>(
+        &mut self,
+        register: &mut R,
+        draw: &Draw,
+        rng: &mut ShotRng,
+        interrupt: &Interrupt,
+    ) -> Result<bool, SampleError> {
+        Ok(self.begin(register, draw, rng, interrupt)? && register.finish(rng))
+    }
+
+    /// Starts anew and runs the first segment. False: it was not accepted.
+    fn begin<R: Register>(
+        &mut self,
+        register: &mut R,
+        draw: &Draw,
+        rng: &mut ShotRng,
+        interrupt: &Interrupt,
+    ) -> Result<bool, SampleError> {
+        self.bits.fill(0);
+        self.events.clear();
+        self.peak_active = 0;
+        if !register.start(draw, rng) {
+            return Ok(false);
+        }
+        let first = self.program.first();
+        self.enter(first, None)?;
+        Ok(self.run(first, register, draw, rng, interrupt))
     }
 
     /// The segment after a branch, entered.

@@ -4,10 +4,11 @@
 //! loop over steps there is. [`batch`] runs many shots on all threads and hands
 //! finished ones on in order. The bits of a shot depend on the seed, its family
 //! and its index alone, never on threads, batches or parts. [`drive`] builds the
-//! register that was chosen.
+//! register that was chosen. [`audit`] checks the norm of the drawn sums.
 //!
 //! This module knows programs and registers, and nothing of files or terminals.
 
+pub mod audit;
 pub mod batch;
 pub mod drive;
 pub mod machine;
@@ -16,6 +17,7 @@ pub mod random;
 mod tests;
 
 pub use crate::readout::Interrupt;
+pub use audit::NormAudit;
 pub use batch::{Block, Drawing, Rows, Sampler};
 pub use drive::Drive;
 pub use machine::{FaultEvent, ShotAudit, pauli_code};

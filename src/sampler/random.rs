@@ -16,6 +16,8 @@ pub enum Family {
     Shots,
     /// Shots of the companion circuit.
     Companion,
+    /// Draws whose norm is audited.
+    Audit,
 }
 
 const STEP: u64 = 0x9e37_79b9_7f4a_7c15;
@@ -31,6 +33,7 @@ pub fn generator(seed: u64, family: Family, index: u64) -> ShotRng {
     let family: u64 = match family {
         Family::Shots => 1,
         Family::Companion => 2,
+        Family::Audit => 3,
     };
     let mut state = mix(seed.wrapping_add(STEP));
     for part in [family, index] {
@@ -54,7 +57,7 @@ mod tests {
     /// standard deviations (false alarm 64·2e-9, normal law).
     #[test]
     fn neighbouring_streams_are_uncorrelated() {
-        for family in [Family::Shots, Family::Companion] {
+        for family in [Family::Shots, Family::Companion, Family::Audit] {
             let mut counts = [0i64; 64];
             let mut before: u64 = generator(3, family, 0).random();
             let shots = 100_000;

@@ -8,6 +8,7 @@
 //! on it with plain matrices.
 
 mod exact;
+mod norms;
 mod random_circuits;
 mod reference;
 
@@ -31,7 +32,7 @@ use crate::readout::dense::Dense;
 use crate::readout::probe::{self, Probe, acceptance_cap};
 use crate::readout::walk::{self, Walk};
 
-use super::{Block, Drawing, Family, Interrupt, SampleError, Sampler, Silent};
+use super::{Block, Drawing, Family, Interrupt, SampleError, Sampler, Silent, audit};
 use random_circuits::{Menu, random_circuit, random_clifford};
 use reference::reference;
 
@@ -388,30 +389,18 @@ fn mean_norm_is_exact_on_thirty_sites() {
     );
     let terms = 64;
     let sparsifier = Sparsifier::new(program.sites());
-    // A cap that no estimate reaches: every draw is refused after its first one.
-    let settings = probe::Settings {
-        probes: 8,
-        cap: 1e300,
-        branches: false,
-    };
-    let mut register = Probe::<1>::new(program.sites(), program.slots(), settings, &NEVER);
-    let mut machine = super::machine::Machine::new(&program, crate::program::MAX_SLOTS, false);
-    let mut draw = crate::magic::Draw::new();
     let draws = 400;
-    let (mut sum, mut squares) = (0.0, 0.0);
-    for index in 0..draws {
-        let mut rng = super::random::generator(5, Family::Shots, index);
-        sparsifier.draw_members(&mut rng, &mut draw);
-        sparsifier.draw_terms(terms, &mut rng, &mut draw);
-        let accepted = machine.attempt(&mut register, &draw, &mut rng, &NEVER);
-        assert_eq!(accepted, Ok(false));
-        let norm = register
-            .diagnostics()
-            .norm
-            .expect("a first estimate was made");
-        sum += norm;
-        squares += norm * norm;
-    }
+    let indices = audit::Audited {
+        count: draws,
+        total: draws,
+        range: 0..draws,
+    };
+    let found =
+        audit::norm_audit(&program, &sparsifier, 5, terms, indices, &NEVER).expect("enough room");
+    assert_eq!(found.estimates.len() as u64, draws);
+    assert_eq!(found.log_extent, log_extent(program.sites()));
+    let sum: f64 = found.estimates.iter().sum();
+    let squares: f64 = found.estimates.iter().map(|norm| norm * norm).sum();
     let mean = sum / draws as f64;
     let error = ((squares / draws as f64 - mean * mean) / draws as f64).sqrt();
     let expected = 1.0 + (extent - 1.0) / terms as f64;

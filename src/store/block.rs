@@ -12,8 +12,6 @@ pub struct AuditBlock {
     pub peak_active: Vec<u16>,
     /// Terms not projected to zero at the end; 0 for the dense read-out.
     pub terms_left: Vec<u32>,
-    /// Estimate of ‖Ω‖² the shot was accepted by; NaN where none was made.
-    pub norm: Vec<f64>,
 }
 
 impl AuditBlock {
@@ -23,10 +21,6 @@ impl AuditBlock {
             attempts: shots.iter().map(|shot| shot.attempts).collect(),
             peak_active: shots.iter().map(|shot| shot.peak_active).collect(),
             terms_left: shots.iter().map(|shot| shot.register.terms_left).collect(),
-            norm: shots
-                .iter()
-                .map(|shot| shot.register.norm.unwrap_or(f64::NAN))
-                .collect(),
         }
     }
 }

@@ -11,6 +11,8 @@ pub(super) const SHOTS: &str = "shots";
 pub(super) const COMPANION: &str = "companion";
 /// Group of the diagnostics.
 pub(super) const AUDIT: &str = "audit";
+/// Group of the norm audit inside [`AUDIT`].
+pub(super) const NORM: &str = "norm";
 /// Group of the faults.
 pub(super) const FAULTS: &str = "faults";
 /// Table of locations inside [`FAULTS`].

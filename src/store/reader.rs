@@ -12,7 +12,7 @@ use ndarray::{Array1, Array2, s};
 use super::layout::{self, LocationRecord, SiteRecord, plain};
 use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header};
 use super::{Part, ReductionHeader, RegisterHeader, StoreError, block};
-use crate::sampler::{Family, FaultEvent, Rows};
+use crate::sampler::{Family, FaultEvent, NormAudit, Rows};
 
 /// Most bits a register may have; far more than a circuit can declare.
 const MOST_BITS: usize = 1 << 24;
@@ -29,7 +29,7 @@ pub struct ShotFile {
     clipped: u64,
     faults: Option<Group>,
     // Closed last.
-    _file: File,
+    file: File,
 }
 
 /// The data sets of one family.
@@ -77,7 +77,7 @@ impl ShotFile {
             audit,
             clipped,
             faults,
-            _file: file,
+            file,
         })
     }
 
@@ -121,8 +121,30 @@ impl ShotFile {
             attempts: self.column(&self.audit, "attempts", &range)?,
             peak_active: self.column(&self.audit, "peak_active", &range)?,
             terms_left: self.column(&self.audit, "terms_left", &range)?,
-            norm: self.column(&self.audit, "norm", &range)?,
         })
+    }
+
+    /// The norm audit; `None` where none was made.
+    pub fn norm_audit(&self) -> Result<Option<NormAudit>, StoreError> {
+        let Ok(group) = self.audit.group(layout::NORM) else {
+            return Ok(None);
+        };
+        let source = Source {
+            path: &self.path,
+            file: &self.file,
+        };
+        let all = 0..MOST_TABLE_ROWS;
+        let audit = NormAudit {
+            shots: self.column(&group, "shot", &all)?,
+            estimates: self.column(&group, "estimate", &all)?,
+            log_extent: source.attribute(&group, "log_extent")?,
+            terms: source.attribute(&group, "terms")?,
+            probes: source.attribute(&group, "probes")?,
+        };
+        if audit.shots.len() != audit.estimates.len() {
+            return Err(self.damaged("the lists of the norm audit differ in length"));
+        }
+        Ok(Some(audit))
     }
 
     /// Number of faults recorded; `None` if they were not.
@@ -160,6 +182,8 @@ impl ShotFile {
         match family {
             Family::Shots => Some(&self.shots),
             Family::Companion => self.companion.as_ref(),
+            // Audited draws leave no bits.
+            Family::Audit => None,
         }
     }
 

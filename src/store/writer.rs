@@ -17,7 +17,7 @@ use super::layout::{self, LocationRecord, SiteRecord, text};
 use super::tables::{Column, Table, new_group};
 use super::temporary::Temporary;
 use super::{AuditBlock, FORMAT, FORMAT_VERSION, Header, ReductionHeader};
-use crate::sampler::{FaultEvent, Rows};
+use crate::sampler::{FaultEvent, NormAudit, Rows};
 
 /// What a [`Writer`] shall do besides writing shots.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
@@ -31,11 +31,25 @@ pub struct WriterOptions {
 }
 
 /// What is known when all shots are there.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+#[derive(Debug, Clone, Copy, PartialEq, Default)]
 pub struct Finished {
     /// Shots whose acceptance ratio was above the cap; stored as attribute
     /// `clipped` of `/audit`.
     pub clipped: u64,
+    /// Where entangled qubits are damped and companion shots were drawn: the
+    /// trace t of the companion and the mixing weight ξ·t/(k − 1 + ξ·t) that
+    /// follows. Stored as `companion_trace`, and as `mixing_weight` in the place
+    /// of the one of the header.
+    pub damped: Option<Damped>,
+}
+
+/// What damping of entangled qubits does to the mixing law.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Damped {
+    /// Trace of the companion.
+    pub companion_trace: f64,
+    /// λ with that trace.
+    pub mixing_weight: f64,
 }
 
 /// A result file being written. Dropped before [`Writer::finish`] it leaves
@@ -115,8 +129,25 @@ impl Writer {
         self.write(|open| {
             open.audit.attempts.append(&block.attempts)?;
             open.audit.peak_active.append(&block.peak_active)?;
-            open.audit.terms_left.append(&block.terms_left)?;
-            open.audit.norm.append(&block.norm)
+            open.audit.terms_left.append(&block.terms_left)
+        })
+    }
+
+    /// Writes the norm audit as the group `norm` of `/audit`; at most once.
+    pub fn write_norms(&mut self, audit: &NormAudit) -> Result<(), StoreError> {
+        self.write(|open| {
+            let name = format!("{}/{}", layout::AUDIT, layout::NORM);
+            let group = new_group(&open.file, &name)?;
+            let mut shots = Column::create(&group, "shot")?;
+            shots.append(&audit.shots)?;
+            shots.flush()?;
+            let mut estimates = Column::create(&group, "estimate")?;
+            estimates.append(&audit.estimates)?;
+            estimates.flush()?;
+            number(&group, "expected", audit.expected())?;
+            number(&group, "log_extent", audit.log_extent)?;
+            number(&group, "terms", audit.terms)?;
+            number(&group, "probes", audit.probes)
         })
     }
 
@@ -199,8 +230,12 @@ impl Open {
         self.audit.attempts.flush()?;
         self.audit.peak_active.flush()?;
         self.audit.terms_left.flush()?;
-        self.audit.norm.flush()?;
         number(&self.audit.group, "clipped", finished.clipped)?;
+        if let Some(damped) = finished.damped {
+            number(&self.file, "companion_trace", damped.companion_trace)?;
+            let weight = self.file.attr("mixing_weight")?;
+            weight.write_scalar(&damped.mixing_weight)?;
+        }
         if let Some(faults) = &mut self.faults {
             faults.shot.flush()?;
             faults.location.flush()?;
@@ -236,6 +271,7 @@ impl Prepared {
             ("noise", header.noise.as_deref()),
             ("title", header.title.as_deref()),
             ("readout", Some(header.readout.as_str())),
+            ("correction", options.companion.then_some(super::CORRECTION)),
         ];
         let texts = texts
             .into_iter()
@@ -294,7 +330,6 @@ fn lay_out(
         attempts: Column::create(&group, "attempts")?,
         peak_active: Column::create(&group, "peak_active")?,
         terms_left: Column::create(&group, "terms_left")?,
-        norm: Column::create(&group, "norm")?,
         group,
     };
     if !options.faults {
@@ -387,7 +422,6 @@ struct Audit {
     attempts: Column<u32>,
     peak_active: Column<u16>,
     terms_left: Column<u32>,
-    norm: Column<f64>,
     group: Group,
 }
 

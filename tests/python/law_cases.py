@@ -78,8 +78,9 @@ def noisy_face_states(c):
     m = c.bits("m", 2)
     for qubit in q:
         c.prepare(qubit, ("ry", (FACE_ANGLE,), []), ("rz", (QUARTER,), [depolarizing(0.1)]))
-    c.gate("h", q[0])
-    c.gate("cx", *q)
+    # Nothing of either qubit alone is read: no rotation of it goes unseen.
+    c.gate("cz", *q)
+    spread(c, q)
     c.measure_all(q, m)
 
 
@@ -91,10 +92,10 @@ def generic_states(c):
     c.prepare(q[1], ("ry", (1.5,), []), ("rz", (0.7,), [dephasing(0.03)]))
     c.prepare(q[2], ("ry", (2.2,), [amplitude_damping(0.1)]),
               ("rz", (-0.9,), [over_rotation("x", 0.2)]))
-    c.gate("cx", q[0], q[1])
-    c.gate("h", q[0])
-    c.gate("cx", q[1], q[2])
-    c.gate("h", q[2])
+    # Nothing of any qubit alone is read: no rotation of it goes unseen.
+    c.gate("cz", q[0], q[1])
+    c.gate("cz", q[1], q[2])
+    spread(c, q)
     c.measure_all(q, m)
 
 
@@ -121,12 +122,14 @@ def toffoli_and_swap(c):
 
 
 def entangled_t(c):
-    """t gates on qubits that are not fresh; they are sites of their own."""
+    """t gates on qubits that are not fresh, about axes that the state tells apart;
+    they are sites of their own."""
     q = c.qubits("q", 3)
     m = c.bits("m", 3)
     spread(c, q)
     c.gate("cz", q[0], q[1])
     c.gate("cz", q[1], q[2])
+    c.gate("cz", q[0], q[2])
     spread(c, q)
     for qubit, name in zip(q, ("t", "tdg", "t")):
         c.rotation(name, qubit, noise=[dephasing(0.02)], dephasing=0.02)
@@ -153,11 +156,13 @@ def depolarized_t(c):
 
 
 def pauli_axes(c):
-    """Rotations about X, Y, XX, YY and ZZ."""
+    """Rotations about X, Y, XX, YY and ZZ, no two of which act alike on the state."""
     q = c.qubits("q", 3)
     m = c.bits("m", 3)
     c.gate("h", q[0])
     c.gate("cx", q[0], q[1])
+    c.gate("s", q[1])
+    c.gate("h", q[1])
     c.gate("cx", q[1], q[2])
     c.rotation("rx", q[0], parameters=(0.5,))
     c.rotation("ryy", q[1], q[2], parameters=(2.0,))
@@ -238,13 +243,17 @@ def state_after_a_measurement(c):
     phases of its components belong to the components, not to the terms before.
     (Sites between measurements change the law a little, here by 0.2 %.)"""
     q = c.qubits("q", 2)
-    m = c.bits("m", 2)
+    m = c.bits("m", 3)
     c.gate("h", q[0])
     c.rotation("t", q[0])
     c.gate("h", q[0])
     c.measure(q[0], m[0])
     c.prepare(q[1], ("u3", (2.1457, 1.079, -2.534), []), ("p", (-3.061,), []))
-    c.measure(q[1], m[1])
+    # Nothing of the second qubit alone is read: no rotation of it goes unseen.
+    c.gate("h", q[0])
+    c.gate("cz", *q)
+    spread(c, q)
+    c.measure_all(q, m[1:])
 
 
 def two_ccz(c):

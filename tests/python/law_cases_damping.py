@@ -131,6 +131,27 @@ def damped_after_measurement(c):
     c.measure_all(q[1:], out)
 
 
+def damped_in_a_branch(c):
+    """Damping that a measured bit decides about, which changes what comes after."""
+    q = c.qubits("q", 3)
+    m = c.bits("m", 1)
+    out = c.bits("out", 2)
+    spread(c, q)
+    c.gate("cz", q[0], q[1])
+    c.gate("cz", q[1], q[2])
+    spread(c, q)
+    c.rotation("t", q[0])
+    c.gate("h", q[0])
+    c.measure(q[0], m[0])
+    c.rotation("t", q[1])
+    with c.when(m[0]):
+        c.damp(q[1], 0.8)
+    c.gate("h", q[1])
+    c.gate("cx", q[1], q[2])
+    c.gate("h", q[2])
+    c.measure_all(q[1:], out)
+
+
 def damped_face_state(c):
     """A generic prepared state, entangled, then damped; the damping of the fresh
     qubit before belongs to the prepared state."""

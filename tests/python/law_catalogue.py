@@ -1,7 +1,7 @@
 """All circuits of the mixing law: name, function, numbers of terms, read-outs."""
 
+from collections.abc import Callable
 from dataclasses import dataclass
-from typing import Callable
 
 import law_cases as cases
 import law_cases_adaptive as adaptive
@@ -59,5 +59,6 @@ CASES = {
     "damped in a gate": Case(damping.damped_in_a_gate, (3,), WALK),
     "relaxed pair": Case(damping.relaxed_pair, (2,), WALK),
     "damped after measurement": Case(damping.damped_after_measurement, (2,), WALK),
+    "damped in a branch": Case(damping.damped_in_a_branch, (2,), WALK),
     "damped face state": Case(damping.damped_face_state, (2,), WALK),
 }

@@ -51,6 +51,7 @@ class Outcome:
     faults: dict
     locations: np.ndarray
     stderr: str = ""
+    stdout: str = ""
 
     def counts(self, names=None, companion=False):
         """How often each value of the registers came, the first register's bit 0
@@ -84,7 +85,7 @@ def run(circuit, shots, seed, readout="dense", delta=0.1, terms=None, companion=
         except AssertionError as failure:
             raise AssertionError(f"{failure}\n{circuit.text()}\n{circuit.noise_text()}") from None
         outcome = read(folder / "out.h5")
-    outcome.stderr = result.stderr
+    outcome.stderr, outcome.stdout = result.stderr, result.stdout
     names = [r.name for r in circuit.recorded()]
     if set(outcome.shots) != set(names):
         raise AssertionError(f"recorded {sorted(outcome.shots)}, expected {sorted(names)}")

@@ -168,6 +168,35 @@ class ResultFile(unittest.TestCase):
         self.assertLessEqual(audit["terms_left"][()].max(), self.file.attrs["terms"])
         self.assertGreaterEqual(audit.attrs["clipped"], 0)
 
+    def test_norm_audit(self):
+        """The one site is met before the only measurement of an active qubit: the
+        mean of the estimates is 1 + (xi - 1)/k, here with so few of them that 6
+        standard deviations of one estimate (at most its own mean) are allowed."""
+        norms = self.file["audit/norm"]
+        extent, terms = self.file.attrs["extent"], self.file.attrs["terms"]
+        self.assertAlmostEqual(norms.attrs["expected"], 1 + (extent - 1) / terms, delta=1e-12)
+        self.assertAlmostEqual(norms.attrs["log_extent"], math.log(extent), delta=1e-12)
+        self.assertEqual(norms.attrs["terms"], terms)
+        shots, estimates = norms["shot"][()], norms["estimate"][()]
+        self.assertEqual((shots.dtype, estimates.dtype), (np.uint64, np.float64))
+        self.assertEqual(shots.shape, estimates.shape)
+        self.assertGreater(len(shots), 0)
+        self.assertTrue((np.diff(shots.astype(int)) > 0).all() and shots[-1] < SHOTS)
+        self.assertTrue((estimates >= 0).all())
+        expected = norms.attrs["expected"]
+        self.assertLess(abs(estimates.mean() - expected), 6 * expected / math.sqrt(len(shots)))
+        shown = program.command("show", self.folder / "out.h5", "--json")
+        norm = json.loads(shown.stdout)["norm"]
+        self.assertEqual(norm["estimates"], len(shots))
+        self.assertAlmostEqual(norm["mean"], estimates.mean(), delta=1e-12)
+        error = estimates.std(ddof=1) / math.sqrt(len(shots))
+        self.assertAlmostEqual(norm["standard_error"], error, delta=1e-12)
+
+    def test_the_file_says_how_to_correct(self):
+        text = self.file.attrs["correction"]
+        for word in ("mixing_weight", "/companion", "standard error"):
+            self.assertIn(word, text)
+
     def test_no_plugin_is_needed(self):
         seen = []
 

@@ -9,6 +9,8 @@ import numpy as np
 import goodness_of_fit as fit
 import program
 from circuit_builder import Circuit
+from known_circuits import fill_hidden_shift
+from law_circuits import LawCircuit
 from noise_channels import dephasing, depolarizing
 from reference import distribution
 
@@ -63,9 +65,6 @@ class HiddenShift(unittest.TestCase):
     def test_one_block(self):
         """The companion's success of a block with two ccz, against a density
         matrix with each ccz replaced by the even mixture of its diagonals."""
-        from law_circuits import LawCircuit
-        from known_circuits import fill_hidden_shift
-
         companion = LawCircuit(True)
         fill_hidden_shift(companion, 3, 0b110101, [(0, 1, 2)], companion.three_qubit)
         shift = [0] * (2 * line_circuits.HALF)

@@ -36,25 +36,37 @@ use super::axis::{as_word, dephasing_passes};
 use super::timeline::{Direction, Timeline, Work};
 use super::walk::Walk;
 
-/// How many instructions of other statements a dephasing moves past.
-const REACH: usize = 64;
+/// How many instructions a dephasing moves past before noise from further away
+/// is looked at.
+const NEAR: usize = 64;
+
+/// The most it moves past at all, where there are few sites.
+const FAR: usize = 4096;
+
+/// Instructions looked at from all sites together, in one direction, beyond
+/// [`NEAR`]: a second or two.
+const BUDGET: usize = 1 << 22;
 
 /// The most letters an axis may grow to on its way.
-const WIDEST: usize = 4;
+const WIDEST: usize = 16;
 
 /// A common part below this is rounding.
 const ROUNDING: f64 = 1e-15;
 
 /// Moves noise into every site: first that of the site's own statement, which
-/// nobody else should take, then whatever it can reach.
+/// nobody else should take, then what is near, then whatever it can reach.
 pub(super) fn absorb(timeline: &mut Timeline) {
-    for own in [true, false] {
+    let is_site = |work: &Work| matches!(work, Work::Rotation { .. } | Work::Prepared(_));
+    let nodes = timeline.nodes.iter();
+    let sites = nodes.filter(|node| is_site(&node.work)).count();
+    let far = (BUDGET / sites.max(1)).clamp(NEAR, FAR);
+    for (own, reach) in [(true, NEAR), (false, NEAR), (false, far)] {
         for index in 0..timeline.nodes.len() as u32 {
             match &timeline.node(index).work {
                 Work::Rotation { axis, .. } => {
                     let axis = axis.clone();
                     for direction in [Direction::Forward, Direction::Backward] {
-                        gather(timeline, index, axis.clone(), direction, own);
+                        gather(timeline, index, axis.clone(), direction, own, reach);
                     }
                 }
                 Work::Prepared(prepared) if !own => {
@@ -69,6 +81,7 @@ pub(super) fn absorb(timeline: &mut Timeline) {
                             smallvec![(qubit, letter)],
                             Direction::Forward,
                             false,
+                            reach,
                         );
                     }
                 }
@@ -79,7 +92,14 @@ pub(super) fn absorb(timeline: &mut Timeline) {
 }
 
 /// Walks from a site and takes into it what its axis allows.
-fn gather(timeline: &mut Timeline, site: u32, axis: PauliProduct, direction: Direction, own: bool) {
+fn gather(
+    timeline: &mut Timeline,
+    site: u32,
+    axis: PauliProduct,
+    direction: Direction,
+    own: bool,
+    reach: usize,
+) {
     let (condition, operation) = {
         let node = timeline.node(site);
         (node.condition, node.operation)
@@ -87,7 +107,7 @@ fn gather(timeline: &mut Timeline, site: u32, axis: PauliProduct, direction: Dir
     let widest = axis.len().max(WIDEST);
     let mut walk = Walk::new(site, axis.clone(), direction);
     let mut passed = 0;
-    while passed < REACH
+    while passed < reach
         && !is_stabiliser_mixture(&timeline.node(site).work)
         && let Some(next) = walk.next(timeline)
     {

@@ -12,7 +12,9 @@ use std::f64::consts::FRAC_PI_2;
 
 use crate::circuit::{Clifford, Pauli, PauliProduct, Qubits};
 use crate::magic::bloch::Bloch;
-use crate::magic::{Instruction, Kind, PreparedSite, RotationSite, Schedule, Site, SiteKind};
+use crate::magic::{
+    Instruction, Kind, PreparedSite, RotationSite, Schedule, Site, SiteKind, extent,
+};
 use crate::noise::{PauliChannel, PauliChoices, PauliWord};
 
 /// An angle or a component of a Bloch vector this near to that of a Clifford
@@ -40,12 +42,7 @@ pub(super) enum Fate {
         last: usize,
     },
     /// A prepared state that took rotations in.
-    Prepared {
-        bloch: Bloch,
-        ideal: Bloch,
-        /// Whether nobody can tell its state from its dephased one.
-        dephased: bool,
-    },
+    Prepared { bloch: Bloch, ideal: Bloch },
 }
 
 /// A rotation to be taken in.
@@ -96,7 +93,7 @@ fn both(p: f64, q: f64) -> f64 {
 /// The fate of `site`, a prepared state, after a rotation about X, Y or Z
 /// (`axis` 0, 1 or 2) of its qubit.
 pub(super) fn turn_state(fate: &mut Fate, site: &Site, axis: usize, incoming: Incoming) {
-    let Some((bloch, ideal, dephased)) = state(fate, site) else {
+    let Some((bloch, ideal)) = state(fate, site) else {
         return;
     };
     let angle = if incoming.negative {
@@ -109,34 +106,40 @@ pub(super) fn turn_state(fate: &mut Fate, site: &Site, axis: usize, incoming: In
     *fate = Fate::Prepared {
         bloch: turned,
         ideal: turn(ideal, axis, angle),
-        dephased,
     };
 }
 
-/// The fate of a prepared state that nobody can tell from the same state fully
-/// dephased about an axis.
-pub(super) fn dephase_state(fate: &mut Fate, site: &Site, axis: usize) {
-    if let Some((mut bloch, ideal, _)) = state(fate, site) {
-        dephase(&mut bloch, axis, 0.5);
-        *fate = Fate::Prepared {
-            bloch,
-            ideal,
-            dephased: true,
-        };
+/// The fate of a prepared state when nobody can see a rotation of it about an
+/// axis: it is turned to where its extent is less, if there is such a place.
+/// Returns whether it is an eigenstate of a Pauli now and was none.
+pub(super) fn align_state(fate: &mut Fate, site: &Site, axis: usize) -> bool {
+    let Some((bloch, ideal)) = state(fate, site) else {
+        return false;
+    };
+    let (a, b) = ((axis + 1) % 3, (axis + 2) % 3);
+    let turned = turn(bloch, axis, -bloch[b].atan2(bloch[a]));
+    if extent::of_state(turned) > extent::of_state(bloch) - TOLERANCE {
+        return false;
     }
+    *fate = Fate::Prepared {
+        bloch: turned,
+        ideal: turn(ideal, axis, -bloch[b].atan2(bloch[a])),
+    };
+    along(bloch).is_none() && along(turned).is_some()
 }
 
-fn state(fate: &Fate, site: &Site) -> Option<(Bloch, Bloch, bool)> {
+/// The axis of a vector that lies on one; a zero vector counts as lying on x.
+fn along(bloch: Bloch) -> Option<usize> {
+    (0..3).find(|&axis| {
+        let others = [(axis + 1) % 3, (axis + 2) % 3];
+        others.iter().all(|&other| bloch[other].abs() < TOLERANCE)
+    })
+}
+
+fn state(fate: &Fate, site: &Site) -> Option<(Bloch, Bloch)> {
     match (fate, &site.kind) {
-        (
-            &Fate::Prepared {
-                bloch,
-                ideal,
-                dephased,
-            },
-            _,
-        ) => Some((bloch, ideal, dephased)),
-        (Fate::Kept, SiteKind::Prepared(prepared)) => Some((prepared.bloch, prepared.ideal, false)),
+        (&Fate::Prepared { bloch, ideal }, _) => Some((bloch, ideal)),
+        (Fate::Kept, SiteKind::Prepared(prepared)) => Some((prepared.bloch, prepared.ideal)),
         _ => None,
     }
 }
@@ -240,14 +243,9 @@ impl Writer<'_> {
                     self.site(site, Some((kind, without_noise)), instruction);
                 }
             }
-            (
-                &Fate::Prepared {
-                    bloch,
-                    ideal,
-                    dephased,
-                },
-                &Kind::Prepare { qubit, .. },
-            ) => self.prepared(site, bloch, ideal, dephased, qubit, instruction),
+            (&Fate::Prepared { bloch, ideal }, &Kind::Prepare { qubit, .. }) => {
+                self.prepared(site, bloch, ideal, qubit, instruction);
+            }
             (Fate::Gone | Fate::Rotation { .. } | Fate::Prepared { .. }, _) => {}
         }
     }
@@ -276,37 +274,21 @@ impl Writer<'_> {
         self.schedule.instructions.push(at);
     }
 
-    fn prepared(
-        &mut self,
-        site: usize,
-        bloch: Bloch,
-        ideal: Bloch,
-        dephased: bool,
-        qubit: u32,
-        at: Instruction,
-    ) {
-        let along = (0..3).find(|&axis| {
-            let others = [(axis + 1) % 3, (axis + 2) % 3];
-            others.iter().all(|&other| bloch[other].abs() < TOLERANCE)
-        });
-        if let Some(axis) = along {
-            let flip = (1.0 - bloch[axis].abs()) / 2.0;
-            // A state that is a mixture only because nobody can tell stays a
-            // site: a channel would be taken for noise of the circuit.
-            if flip < TOLERANCE || !dephased {
-                for gate in eigenstate(qubit, axis, bloch[axis] < 0.0) {
-                    self.push(&at, Kind::Clifford(gate));
-                }
-                if flip >= TOLERANCE {
-                    let letter = if axis == 2 { Pauli::X } else { Pauli::Z };
-                    let axis = [(qubit, letter)].into_iter().collect();
-                    self.push(&at, Kind::Pauli(dephasing(&axis, flip)));
-                }
-                return;
+    fn prepared(&mut self, site: usize, bloch: Bloch, ideal: Bloch, qubit: u32, at: Instruction) {
+        if let Some(axis) = along(bloch) {
+            for gate in eigenstate(qubit, axis, bloch[axis] < 0.0) {
+                self.push(&at, Kind::Clifford(gate));
             }
+            let flip = (1.0 - bloch[axis].abs()) / 2.0;
+            if flip >= TOLERANCE {
+                let letter = if axis == 2 { Pauli::X } else { Pauli::Z };
+                let axis = [(qubit, letter)].into_iter().collect();
+                self.push(&at, Kind::Pauli(dephasing(&axis, flip)));
+            }
+            return;
         }
         let state = PreparedSite::with_ideal(bloch, ideal);
-        let without_noise = crate::magic::extent::of_state(ideal);
+        let without_noise = extent::of_state(ideal);
         let kind = SiteKind::Prepared(state);
         self.site(site, Some((kind, without_noise)), at);
     }

@@ -6,7 +6,12 @@
 //! signed means that the sign is the same for every O. Then a rotation by b
 //! about R here equals one by ±b about A there: the two merge. At the end of
 //! the circuit a row still carried leaves a unitary that the trace does not
-//! see, for each O by itself: the site goes, whatever the signs.
+//! see, for each O by itself: the site goes, whatever the signs. A prepared state
+//! with a row still carried may be turned about that axis at will; it is, if that
+//! makes it cheaper, such as T|+⟩ back to |+⟩. (It might be dephased as well, and
+//! would then always be a mixture of stabiliser states. That is left out: it
+//! would only serve qubits that are read as they were made, one rotated qubit
+//! read at once, where the cost is small and the sites are what is looked at.)
 //!
 //! **What happens to a row**, for O' ranging over the Kraus operators of the
 //! next instruction:
@@ -44,7 +49,7 @@ use crate::magic::{Kind, Schedule, Site, SiteKind};
 use crate::noise::{PauliChannel, PauliChoices};
 
 use super::known::{Known, Relation};
-use super::merged::{Fate, Incoming, dephase_state, turn_rotation, turn_state};
+use super::merged::{Fate, Incoming, align_state, turn_rotation, turn_state};
 use super::rows::{MAX_ROWS, Mask, Rows};
 use crate::program::turns::quarter_turns_of;
 
@@ -330,21 +335,13 @@ impl Pass<'_> {
                     self.found.changed = true;
                 }
                 Some(axis) => {
-                    let before = bloch_of(fate, &self.sites[index]);
-                    dephase_state(fate, &self.sites[index], axis);
-                    let after = bloch_of(fate, &self.sites[index]);
-                    self.found.changed |= before != after;
+                    if align_state(fate, &self.sites[index], axis) {
+                        self.found.unobservable += 1;
+                        self.found.changed = true;
+                    }
                 }
             }
         }
         self.found
-    }
-}
-
-fn bloch_of(fate: &Fate, site: &Site) -> Option<[f64; 3]> {
-    match (fate, &site.kind) {
-        (Fate::Prepared { bloch, .. }, _) => Some(*bloch),
-        (Fate::Kept, SiteKind::Prepared(prepared)) => Some(prepared.bloch),
-        _ => None,
     }
 }

@@ -424,6 +424,29 @@ fn clifford_stretches_with_pauli_noise_stay() {
     assert_eq!(schedule.instructions.len(), 3);
 }
 
+/// A dephasing passes sites it commutes with, over a long way and through wide
+/// axes, and not those it does not commute with.
+#[test]
+fn noise_passes_sites_it_commutes_with() {
+    let chain = |gates: usize| {
+        (0..gates).map(|step| {
+            let pair = [(0, 1), (1, 2), (2, 0)][step % 3];
+            Kind::Clifford(Clifford::Cz(pair.0, pair.1))
+        })
+    };
+    for (between, reaches) in [("ZZ", true), ("IZ", true), ("XX", false)] {
+        let kinds = [rotation("Z", FRAC_PI_4), rotation(between, 0.3)]
+            .into_iter()
+            .chain(chain(600))
+            .chain([channel(&[0], &[("Z", 0.05)])]);
+        let schedule = scheduled(&entangled(kinds));
+        assert_eq!(schedule.sites.len(), 2);
+        let found = dephasing_of(&schedule.sites[0]);
+        close(found, if reaches { 0.05 } else { 0.0 });
+        assert_eq!(channels(&schedule), usize::from(!reaches));
+    }
+}
+
 #[test]
 fn later_dephasing_reaches_a_prepared_state() {
     let schedule = scheduled(&circuit([
