@@ -6,6 +6,13 @@ use crate::sampler::Interrupt;
 
 use super::{CommandError, message};
 
+/// What Ctrl-C is answered with while shots are drawn into a file.
+pub(super) const STOPPING_A_RUN: &str =
+    "stopping; finished shots are kept (a second Ctrl-C ends at once and loses them)";
+
+/// What it is answered with where nothing is lost.
+pub(super) const STOPPING: &str = "stopping (a second Ctrl-C ends at once)";
+
 /// Raised by Ctrl-C.
 pub(super) static INTERRUPT: Interrupt = Interrupt::new();
 
@@ -21,19 +28,17 @@ pub(super) fn start_threads(wanted: Option<u16>) -> Result<usize, CommandError> 
     Ok(rayon::current_num_threads())
 }
 
-/// The first Ctrl-C asks the work to stop; a later one ends the program. Some
+/// The first Ctrl-C asks the work to stop and is answered with `stopping`; a later one ends the program. Some
 /// senders deliver one request twice at once, so a second signal counts only
 /// after a while.
-pub(super) fn catch_interrupts() -> Result<(), CommandError> {
+pub(super) fn catch_interrupts(stopping: &'static str) -> Result<(), CommandError> {
     const SAME_REQUEST: Duration = Duration::from_secs(1);
     let mut first: Option<Instant> = None;
     ctrlc::set_handler(move || match first {
         None => {
             first = Some(Instant::now());
             INTERRUPT.raise();
-            message::note(
-                "stopping; finished shots are kept (a second Ctrl-C ends at once and loses them)",
-            );
+            message::note(stopping);
         }
         Some(first) if first.elapsed() < SAME_REQUEST => {}
         Some(_) => std::process::exit(130),

@@ -17,7 +17,7 @@ use crate::report::plan_text;
 
 use super::CommandError;
 use super::input::{self, Input, Reading, Reduction, Scheduled, Texts};
-use super::machine::{available_memory, catch_interrupts, start_threads};
+use super::machine::{STOPPING, available_memory, catch_interrupts, start_threads};
 use super::options::{Plan as PlanOptions, Switch};
 use super::picture;
 use super::places::{Places, kind_word};
@@ -49,7 +49,7 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
         absorb: options.absorb == Switch::On,
     })?;
     let threads = start_threads(options.threads)?;
-    catch_interrupts()?;
+    catch_interrupts(STOPPING)?;
     // Kept aside, for circuits that cannot be compiled.
     let left = schedule.sites.clone();
     let told = reduction.clone();
@@ -100,6 +100,7 @@ pub(super) fn plan(options: &PlanOptions) -> Result<(), CommandError> {
             let question = Question {
                 request,
                 deltas: range,
+                rows: &deltas,
                 all: true,
                 seed: options.seed,
                 log_extent,

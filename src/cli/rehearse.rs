@@ -53,6 +53,8 @@ pub(super) struct Question<'a> {
     pub request: Request,
     /// δ that costs are wanted for, from the smallest to the largest.
     pub deltas: (f64, f64),
+    /// The δ that were asked for, in any order.
+    pub rows: &'a [f64],
     /// Whether all read-outs are of interest, or only those a run would take.
     pub all: bool,
     pub seed: u64,
@@ -97,7 +99,7 @@ pub(super) fn model<'p>(
     stopped()?;
     let mut overhead = file_costs(input, question, &blocks)?;
     overhead.start = start;
-    overhead.counting = counting_bytes(input, &blocks, request.shots);
+    overhead.counting += counting_bytes(input, &blocks, request.shots);
     stopped()?;
     let companion = survey.companion(0.1)?;
     stopped()?;
@@ -122,13 +124,20 @@ pub(super) fn model<'p>(
     }
     if (question.all || request.readout == Some(Readout::Probe)) && !program.has_damping() {
         let (_, most) = term_range(&model, question.deltas);
-        let wish = Wish {
-            readout: Some(Readout::Probe),
-            delta: question.deltas.1,
-            ..unlimited
-        };
-        let anchor = choice::choose(program, log_extent, &wish).ok();
-        model.probe = survey.probe(most, anchor.as_ref(), 0.3)?;
+        // The smallest δ that is cheap enough comes closest to what is asked.
+        let anchors: Vec<_> = question
+            .rows
+            .iter()
+            .filter_map(|&delta| {
+                let wish = Wish {
+                    readout: Some(Readout::Probe),
+                    delta,
+                    ..unlimited
+                };
+                choice::choose(program, log_extent, &wish).ok()
+            })
+            .collect();
+        model.probe = survey.probe(most, &anchors, 0.3)?;
         stopped()?;
     }
     if wants(Readout::Dense)
@@ -158,7 +167,7 @@ fn term_range(model: &Model<'_>, deltas: (f64, f64)) -> (u64, u64) {
 }
 
 /// Most shots of a rehearsed result file.
-const STORED: usize = 1 << 15;
+const STORED: usize = 1 << 17;
 /// Fewest.
 const FEW: usize = 1 << 11;
 
@@ -229,17 +238,21 @@ fn file_costs(
         Ok(started.elapsed().as_secs_f64())
     };
     time(FEW, 0)?;
-    let memory = memory();
+    let base = memory();
     let short = time(FEW, 0)?;
     let long = time(STORED, 0)?;
+    // Reading back takes memory that grows up to a few chunks of every register.
+    let read = (memory() - base) / STORED as f64;
+    let counting = read * (question.request.shots as f64).min(4.0 * STORED as f64);
     let shot = (long - short).max(0.0) / written(blocks, STORED, FEW);
     let companion = (time(FEW, STORED)? - short).max(0.0) / written(blocks, STORED, 0);
     Ok(Overhead {
         end: (short - written(blocks, FEW, 0) * shot).max(0.0),
         shot,
         companion,
-        memory,
+        memory: base,
         waiting: waiting as f64,
+        counting,
         ..Overhead::default()
     })
 }
@@ -319,6 +332,7 @@ pub(super) fn within_limits(
             memory,
         },
         deltas: CHOICE_RANGE,
+        rows: &[CHOICE_RANGE.1],
         all: false,
         seed: 1,
         log_extent,

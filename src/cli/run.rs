@@ -19,7 +19,9 @@ use crate::store::{
 
 use super::CommandError;
 use super::input::{self, Input, Reading};
-use super::machine::{INTERRUPT, available_memory, catch_interrupts, start_threads};
+use super::machine::{
+    INTERRUPT, STOPPING_A_RUN, available_memory, catch_interrupts, start_threads,
+};
 use super::options::{DEFAULT_DELTA, Run, Switch, TermsOption};
 use super::places::Places;
 use super::progress::Shown;
@@ -51,7 +53,7 @@ pub(super) fn run(options: &Run) -> Result<(), CommandError> {
         absorb: options.absorb == Switch::On,
     })?;
     let threads = start_threads(options.threads)?;
-    catch_interrupts()?;
+    catch_interrupts(STOPPING_A_RUN)?;
     let log_extent = log_extent(input.program.sites());
     let decided = decide(options, &input, log_extent, threads)?;
     let seed = options.seed.unwrap_or_else(rand::random);

@@ -10,7 +10,7 @@ use crate::report::{LIMIT, Setting, Verification, allowed_bias};
 use crate::sampler::{Block, Drive, Rows};
 
 use super::input::{self, Input, Reading};
-use super::machine::{INTERRUPT, available_memory, catch_interrupts, start_threads};
+use super::machine::{INTERRUPT, STOPPING, available_memory, catch_interrupts, start_threads};
 use super::options::{ReadoutOption, Switch, TermsOption, Verify};
 use super::progress::Shown;
 use super::{CommandError, refuse};
@@ -63,7 +63,7 @@ pub(super) fn verify(options: &Verify) -> Result<(), CommandError> {
         Readout::Probe => allowed_bias(options.delta, mixing_weight, late_sites),
         Readout::Walk | Readout::Dense => 0.0,
     };
-    catch_interrupts()?;
+    catch_interrupts(STOPPING)?;
     let (shots, others) = draw(
         options,
         &input,

@@ -219,11 +219,11 @@ impl<'p> Survey<'p> {
     }
 
     /// The probe, measured with at most `most` terms, and with the real settings of
-    /// `anchor` where those shots are short enough.
+    /// the costliest of `anchors` whose shots are short enough.
     pub fn probe(
         &mut self,
         most: u64,
-        anchor: Option<&Choice>,
+        anchors: &[Choice],
         seconds: f64,
     ) -> Result<Option<ProbeCost>, SampleError> {
         const FIRST: u64 = 32;
@@ -252,15 +252,17 @@ impl<'p> Survey<'p> {
             few.seconds,
             many.seconds,
         );
-        let Some((choice, settings, terms)) =
-            anchor.and_then(|choice| Some((choice, choice.probe?, choice.terms?)))
-        else {
+        let anchor = anchors
+            .iter()
+            .filter_map(|choice| {
+                let (terms, probes) = (choice.terms? as f64, choice.probe?.probes as f64);
+                Some((choice, terms, probes, cost.predict(terms, probes)))
+            })
+            .filter(|&(.., predicted)| predicted * self.threads as f64 <= LONGEST_RUNG / 2.0)
+            .max_by(|a, b| a.3.total_cmp(&b.3));
+        let Some((choice, terms, probes, _)) = anchor else {
             return Ok(Some(cost));
         };
-        let (terms, probes) = (terms as f64, settings.probes as f64);
-        if cost.predict(terms, probes) * self.threads as f64 > LONGEST_RUNG {
-            return Ok(Some(cost));
-        }
         let slice = Slice {
             aim: seconds,
             most: seconds + 2.0 * LONGEST_RUNG,

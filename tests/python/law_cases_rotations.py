@@ -13,11 +13,14 @@ from noise_channels import bit_flip, dephasing, depolarizing, over_rotation, pau
 
 
 def entangled(c, count):
-    """Qubits in a cluster state turned so that Z axes are generic."""
+    """Qubits in a cluster state turned so that Z axes are generic; three in a ring,
+    because at the ends of a chain Z of both acts alike on the state."""
     q = c.qubits("q", count)
     spread(c, q)
     for a, b in zip(q, q[1:]):
         c.gate("cz", a, b)
+    if count == 3:
+        c.gate("cz", q[0], q[2])
     spread(c, q)
     return q
 
@@ -42,6 +45,7 @@ def small_angles(c):
         c.rotation("p", qubit, parameters=(angle,))
         c.gate("h", qubit)
     c.gate("cx", q[0], q[2])
+    c.gate("cz", q[1], q[2])
     c.rotation("rz", q[2], parameters=(0.3,))
     spread(c, q)
     c.measure_all(q, m)
