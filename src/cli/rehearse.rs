@@ -99,7 +99,7 @@ pub(super) fn model<'p>(
     stopped()?;
     let mut overhead = file_costs(input, question, &blocks)?;
     overhead.start = start;
-    overhead.counting += counting_bytes(input, &blocks, request.shots);
+    overhead.counting = counting_bytes(input, &blocks, request.shots);
     stopped()?;
     let companion = survey.companion(0.1)?;
     stopped()?;
@@ -166,8 +166,9 @@ fn term_range(model: &Model<'_>, deltas: (f64, f64)) -> (u64, u64) {
     (at(deltas.1).min(average), at(deltas.0).max(average))
 }
 
-/// Most shots of a rehearsed result file.
+/// Most shots of a rehearsed result file, and its bits.
 const STORED: usize = 1 << 17;
+const STORED_BITS: usize = 1 << 23;
 /// Fewest.
 const FEW: usize = 1 << 11;
 
@@ -184,6 +185,8 @@ fn file_costs(
             ..Overhead::default()
         });
     };
+    let bits = run::recorded_bits(input).len().max(1);
+    let stored = (STORED_BITS / bits).clamp(4 * FEW, STORED);
     // Lists grow by doubling, so up to twice what a shot takes.
     let waiting = 2 * (first.rows.words * size_of::<u64>() + size_of::<ShotAudit>());
     let folder = tempfile::tempdir().map_err(|error| {
@@ -194,14 +197,15 @@ fn file_costs(
     let words: Vec<OsString> = vec![
         "shottower".into(),
         "run".into(),
-        question.circuit.into(),
         "--shots".into(),
-        STORED.to_string().into(),
+        stored.to_string().into(),
         "--companion".into(),
         "1".into(),
         "--out".into(),
         folder.path().join("rehearsal.h5").into(),
         "--force".into(),
+        "--".into(),
+        question.circuit.into(),
     ];
     let Ok(Options {
         command: Command::Run(options),
@@ -240,19 +244,18 @@ fn file_costs(
     time(FEW, 0)?;
     let base = memory();
     let short = time(FEW, 0)?;
-    let long = time(STORED, 0)?;
+    let long = time(stored, 0)?;
     // Reading back takes memory that grows up to a few chunks of every register.
-    let read = (memory() - base) / STORED as f64;
-    let counting = read * (question.request.shots as f64).min(4.0 * STORED as f64);
-    let shot = (long - short).max(0.0) / written(blocks, STORED, FEW);
-    let companion = (time(FEW, STORED)? - short).max(0.0) / written(blocks, STORED, 0);
+    let reading = (memory() - base) / stored as f64;
+    let shot = (long - short).max(0.0) / written(blocks, stored, FEW);
+    let companion = (time(FEW, stored)? - short).max(0.0) / written(blocks, stored, 0);
     Ok(Overhead {
         end: (short - written(blocks, FEW, 0) * shot).max(0.0),
         shot,
         companion,
         memory: base,
         waiting: waiting as f64,
-        counting,
+        reading: (reading, 4.0 * stored as f64),
         ..Overhead::default()
     })
 }

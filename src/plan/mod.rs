@@ -9,8 +9,9 @@
 //!
 //! A run takes start + shots·(t + w) + companion·(t_c + w_c) + end: t of a shot
 //! and t_c of a companion shot with all threads at work, w and w_c of writing
-//! one. t of `walk` is a function of k alone, t of `probe` one of k and the number
-//! of random states, t of `dense` is one number. k = ⌈1 + ξ(2/δ − 1)⌉ ties k to δ
+//! one. t of `walk` is a function of k alone (`plan/walk.rs`), t of `probe` one of k
+//! and the number of random states (`plan/probe.rs`), t of `dense` is one number
+//! (`plan/dense.rs`). k = ⌈1 + ξ(2/δ − 1)⌉ ties k to δ
 //! ([`mixing`](crate::magic::mixing)).
 //!
 //! # The JSON document

@@ -46,6 +46,9 @@ pub struct Overhead {
     pub waiting: f64,
     /// Bytes for counting outcomes at the end, when the registers are gone.
     pub counting: f64,
+    /// Bytes that reading back a shot or companion shot takes, and the most shots
+    /// that count.
+    pub reading: (f64, f64),
 }
 
 /// Costs of a circuit by read-out.
@@ -240,7 +243,9 @@ impl Model<'_> {
             ))
         });
         let drawing = registers + waiting * self.overhead.waiting;
-        let memory_bytes = self.overhead.memory + drawing.max(self.overhead.counting);
+        let (reading, most) = self.overhead.reading;
+        let read = reading * (self.request.shots as f64 + companion as f64).min(most);
+        let memory_bytes = self.overhead.memory + drawing.max(self.overhead.counting + read);
         let seconds = predicted.map(|predicted| {
             // Shots go to threads whole.
             let threads = self.request.threads as u64;

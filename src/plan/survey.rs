@@ -1,5 +1,7 @@
 //! Measures what shots of a program cost on this machine, read-out by read-out.
 
+use std::time::Instant;
+
 use crate::program::MAX_SLOTS;
 use crate::readout::choice::{Choice, Readout};
 use crate::readout::probe::Settings;
@@ -127,7 +129,12 @@ impl<'p> Survey<'p> {
         let aim = (seconds / rungs.len().min(6) as f64).clamp(0.05, 0.35);
         let mut measured: Vec<Rung> = Vec::new();
         let mut footprint: Vec<(f64, f64)> = Vec::new();
+        let started = Instant::now();
         for terms in rungs {
+            // However slow the machine is: what was measured must do.
+            if !measured.is_empty() && started.elapsed().as_secs_f64() > 2.5 * seconds {
+                break;
+            }
             if let Some(last) = measured.last() {
                 let batch = last.timing.seconds * self.threads as f64 * terms as f64;
                 if batch / last.terms as f64 > LONGEST_RUNG {

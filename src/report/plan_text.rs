@@ -151,7 +151,7 @@ fn table(plan: &Plan, out: &mut String) -> std::fmt::Result {
         count if count == plan.shots => ", with terms as many companion shots".to_owned(),
         count => format!(", with terms {count} companion shots"),
     };
-    writeln!(out, "for         {} shots{companion}\n", plan.shots)?;
+    writeln!(out, "for         {} shots{companion}", plan.shots)?;
     let sampled = sampled_word(plan);
     if plan.blocked.is_none() {
         let dense = &plan.dense;
