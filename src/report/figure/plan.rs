@@ -35,12 +35,16 @@ pub fn plan_figure(plan: &Plan) -> String {
         Anchor::Start,
         &shortened(&format!("{}: {shots} shots", plan.circuit), 66),
     );
-    let curve: Vec<(f64, f64)> = plan
+    let chosen = plan.choice.as_ref().and_then(|choice| choice.delta);
+    // The curve reaches to the chosen point.
+    let mut curve: Vec<(f64, f64)> = plan
         .curve
         .iter()
         .filter_map(|point| Some((point.delta, point.seconds?)))
+        .chain(chosen.zip(plan.choice.as_ref().map(|choice| choice.seconds)))
         .filter(|(_, seconds)| seconds.is_finite() && *seconds > 0.0)
         .collect();
+    curve.sort_by(|a, b| a.0.total_cmp(&b.0));
     let dense = plan
         .dense
         .seconds
@@ -64,7 +68,8 @@ pub fn plan_figure(plan: &Plan) -> String {
     let low = times.iter().copied().fold(f64::INFINITY, f64::min) / 1.6;
     let high = times.iter().copied().fold(0.0, f64::max) * 1.6;
     let least = plan.curve.iter().map(|point| point.delta);
-    let chosen = plan.choice.as_ref().and_then(|choice| choice.delta);
+    // Room for the mark beside the axis.
+    let chosen = chosen.map(|delta| delta / 1.4);
     let least = least.chain(chosen).fold(1.0, f64::min);
     let most = rows(plan)
         .filter_map(|(row, _)| row.delta)
