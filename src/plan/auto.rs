@@ -28,8 +28,9 @@ pub const SMALL: f64 = 2.0;
 /// By how much the other read-out must be cheaper to be taken.
 pub const MARGIN: f64 = 1.15;
 
-/// Seconds of measuring a read-out.
+/// Seconds of measuring a read-out at most, and as a share of the run.
 const AIM: f64 = 0.15;
+const AIM_SHARE: f64 = 0.015;
 
 /// How many shots there are to draw.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -72,7 +73,8 @@ pub fn choose<'p>(
         let survey = Survey::new(drive(), log_extent, wish.threads, wish.memory as f64, stop);
         // What cannot be timed is left to the rough costs; an error of a branch
         // comes up again in the run itself.
-        if let Ok(Some(found)) = timed(survey, program, &dense, &walk, work)
+        let aim = AIM.min(AIM_SHARE * rough[guess]);
+        if let Ok(Some(found)) = timed(survey, program, &dense, &walk, work, aim)
             && found[1 - guess] * MARGIN < found[guess]
         {
             chosen = 1 - guess;
@@ -88,20 +90,21 @@ fn timed(
     dense: &Choice,
     walk: &Choice,
     work: Work,
+    aim: f64,
 ) -> Result<Option<[f64; 2]>, SampleError> {
     let profile = Profile::new(program);
-    let Some(exact) = survey.dense(Some(dense), &profile, AIM)? else {
+    let Some(exact) = survey.dense(Some(dense), &profile, aim)? else {
         return Ok(None);
     };
     let terms = walk.terms.unwrap_or(1);
-    let Some(found) = survey.walk(terms, terms, counted_bytes(program), AIM)? else {
+    let Some(found) = survey.walk(terms, terms, counted_bytes(program), aim)? else {
         return Ok(None);
     };
     let mut sampled = found.cost.predict(terms as f64).seconds;
     let companion = work.companion.unwrap_or(work.shots);
     if companion > 0
         && work.shots > 0
-        && let Some(timing) = survey.companion(AIM / 3.0)?
+        && let Some(timing) = survey.companion(aim / 3.0)?
     {
         sampled += timing.seconds * companion as f64 / work.shots as f64;
     }
