@@ -29,6 +29,10 @@ CASES = [
     ("wide-layers", "bench-b-gates", 0.5, ("dense", "walk", "probe")),
     ("wide-layers", "bench-b-gates", 0.02, ("walk",)),
     ("wide-mirror", "bench-b-gates", 0.5, ("dense", "walk", "probe")),
+    ("line-forty-t", None, 0.1, ("walk",)),
+    ("line-forty-t", None, 0.02, ("walk",)),
+    ("line-noisy-t", None, 0.1, ("dense", "walk")),
+    ("hidden-shift-forty", None, 0.1, ("dense", "walk")),
 ]
 TIME_LIMIT = 0.25
 MEMORY_LIMIT = 0.15

@@ -117,9 +117,10 @@ impl<'p> Drive<'p> {
         call: Call<'_, 'p, S>,
     ) -> Result<u64, E> {
         let (sites, slots) = (self.program.sites(), self.program.slots());
-        // The caps of very many terms, which the sum of a few terms exceeds.
-        let terms = if self.accept_all { 1 << 62 } else { terms };
-        let settings = walk::Settings::new(sites, terms, self.program.log_damping_trace());
+        let mut settings = walk::Settings::new(sites, terms, self.program.log_damping_trace());
+        if self.accept_all {
+            settings = settings.accepting_all();
+        }
         match slots {
             0..=64 => call.with(|| Walk::<1>::new(sites, slots, settings)),
             65..=128 => call.with(|| Walk::<2>::new(sites, slots, settings)),

@@ -98,6 +98,16 @@ impl Settings {
             prepared,
         }
     }
+    /// The same, but every shot is kept whose sum is not 0: for timing alone.
+    #[must_use]
+    pub fn accepting_all(self) -> Self {
+        Settings {
+            start_cap: f64::MIN_POSITIVE,
+            end_cap: f64::MIN_POSITIVE,
+            ..self
+        }
+    }
+
     /// The companion's trace, from how many of the attempts at a single term were
     /// kept: every one is kept with the chance G/cap.
     pub fn trace(&self, shots: u64, attempts: u64) -> f64 {
