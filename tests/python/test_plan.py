@@ -133,6 +133,20 @@ class Document(unittest.TestCase):
         self.assertEqual({row["readout"] for row in document["rows"]}, {"walk"})
 
 
+class EveryReadOut(unittest.TestCase):
+    """Circuits whose few-term sums are mostly refused in a run: a measurement keeps
+    them all, or plans would wait for shots that never come."""
+
+    def test_large_extents_with_few_terms(self):
+        for name in ("hidden-shift.qasm", "hidden-shift-forty.qasm", "t-injection.qasm"):
+            with self.subTest(name):
+                document, _ = plan(DEMO / name, "--shots", 1000, "--delta", 0.1)
+                [row] = [row for row in document["rows"] if row["delta"] is not None]
+                for readout in ("walk", "probe"):
+                    self.assertGreater(row[readout]["seconds"], 0.0)
+                self.assertGreater(document["dense"]["seconds"], 0.0)
+
+
 class Hopeless(unittest.TestCase):
     def ask(self, qubits, count, *arguments):
         with tempfile.TemporaryDirectory() as folder:
