@@ -10,7 +10,7 @@ import pathlib
 import tempfile
 import time
 
-from benchmark import catalogue, figures, hidden_shift, limits, line, state_vector
+from benchmark import catalogue, figures, hidden_shift, limits, line, planning, state_vector
 from benchmark.timing import Bench, Refused
 
 PARTS = {
@@ -20,6 +20,8 @@ PARTS = {
     "hidden-shift": hidden_shift.measure,
     "state-vector": state_vector.measure,
     "circuits": catalogue.measure,
+    "plan": planning.measure,
+    "auto": planning.automatic,
 }
 
 

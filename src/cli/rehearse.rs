@@ -166,6 +166,9 @@ fn term_range(model: &Model<'_>, deltas: (f64, f64)) -> (u64, u64) {
     (at(deltas.1).min(average), at(deltas.0).max(average))
 }
 
+/// Bytes of freed buffers the HDF5 library keeps at most (its documented default).
+const KEPT_FOR_REUSE: f64 = (16 << 20) as f64;
+
 /// Most shots of a rehearsed result file, and its bits.
 const STORED: usize = 1 << 17;
 const STORED_BITS: usize = 1 << 23;
@@ -245,7 +248,7 @@ fn file_costs(
     let base = memory();
     let short = time(FEW, 0)?;
     let long = time(stored, 0)?;
-    // Reading back takes memory that grows up to a few chunks of every register.
+    // The HDF5 library keeps the buffers of chunks it has read for reuse.
     let reading = (memory() - base) / stored as f64;
     let shot = (long - short).max(0.0) / written(blocks, stored, FEW);
     let companion = (time(FEW, stored)? - short).max(0.0) / written(blocks, stored, 0);
@@ -255,7 +258,7 @@ fn file_costs(
         companion,
         memory: base,
         waiting: waiting as f64,
-        reading: (reading, 4.0 * stored as f64),
+        reading: (reading, KEPT_FOR_REUSE),
         ..Overhead::default()
     })
 }

@@ -46,8 +46,8 @@ pub struct Overhead {
     pub waiting: f64,
     /// Bytes for counting outcomes at the end, when the registers are gone.
     pub counting: f64,
-    /// Bytes that reading back a shot or companion shot takes, and the most shots
-    /// that count.
+    /// Bytes that reading back a shot or companion shot takes, and all of them
+    /// together at most.
     pub reading: (f64, f64),
 }
 
@@ -244,7 +244,7 @@ impl Model<'_> {
         });
         let drawing = registers + waiting * self.overhead.waiting;
         let (reading, most) = self.overhead.reading;
-        let read = reading * (self.request.shots as f64 + companion as f64).min(most);
+        let read = (reading * (self.request.shots as f64 + companion as f64)).min(most);
         let memory_bytes = self.overhead.memory + drawing.max(self.overhead.counting + read);
         let seconds = predicted.map(|predicted| {
             // Shots go to threads whole.

@@ -3,7 +3,7 @@
 Numbers that follow from the theory are recomputed here: k = ceil(1 + xi(2/delta - 1))
 and xi as a product of extents (PRX Quantum 2, 010345 (2021); the extent of a t is
 1/cos^2(pi/8), Quantum 3, 181 (2019)). Times are those of the machine, so only their
-order and sign are checked here; scripts/bench_plan.py compares them with runs.
+order and sign are checked here; `scripts/bench --only plan` compares them with runs.
 """
 
 import json

@@ -1,22 +1,21 @@
-"""Predicted against actual time and memory of runs, as a table.
+"""Predicted against actual time and memory of runs, and the automatic choice.
 
-For every demo circuit and read-out: plan, run, plan again, a few times over, so
-that a machine whose speed drifts is the same for both. The ratio is the median.
-Exit status 1 if a time is off by more than 25 % or a memory by more than 15 %.
-`check` does one case and can be called from elsewhere.
+For every circuit and read-out: plan, run, plan again, a few times over, so that
+a machine whose speed drifts is the same for both. The ratio is the median.
 """
 
-import argparse
 import json
 import os
 import pathlib
 import statistics
 import subprocess
 import sys
-import tempfile
 import time
 
-ROOT = pathlib.Path(__file__).resolve().parents[1]
+from . import figures
+
+PART = "plan"
+ROOT = pathlib.Path(__file__).resolve().parents[2]
 
 # Circuit, noise file, δ, read-outs.
 CASES = [
@@ -38,6 +37,15 @@ TIME_LIMIT = 0.25
 MEMORY_LIMIT = 0.15
 # What a wrong automatic choice may cost, over the better read-out.
 AUTO_LIMIT = 1.5
+# Runs a command without its output and prints its peak memory in KiB.
+WATCH = """
+import os, sys
+quiet = [(os.POSIX_SPAWN_OPEN, 1, os.devnull, os.O_WRONLY, 0)]
+child = os.posix_spawn(sys.argv[1], sys.argv[1:], os.environ, file_actions=quiet)
+_, status, usage = os.wait4(child, 0)
+print(usage.ru_maxrss)
+sys.exit(os.waitstatus_to_exitcode(status))
+"""
 
 
 def arguments(case):
@@ -69,17 +77,15 @@ def run(program, case, readout, shots, folder):
     command = [program, "run", *arguments(case), "--shots", str(shots),
                "--delta", str(case[2]), "--readout", readout, "--seed", "1",
                "--out", str(pathlib.Path(folder) / "plan.h5"), "--force"]
+    # A small process starts the program and waits for it: the peak memory of a
+    # child counts from that of whoever started it.
     start = time.perf_counter()
-    process = subprocess.Popen(command, stdout=subprocess.DEVNULL, stderr=subprocess.PIPE)
-    # The only way to the peak memory of one child; the pipe holds a short message.
-    _, status, usage = os.wait4(process.pid, 0)
+    result = subprocess.run([sys.executable, "-S", "-E", "-c", WATCH, *command],
+                            capture_output=True, text=True, check=False)
     seconds = time.perf_counter() - start
-    message = process.stderr.read().decode()
-    process.stderr.close()
-    process.returncode = os.waitstatus_to_exitcode(status)
-    if process.returncode != 0:
-        raise RuntimeError(message.strip())
-    return seconds, usage.ru_maxrss * 1024
+    if result.returncode != 0:
+        raise RuntimeError(result.stderr.strip())
+    return seconds, int(result.stdout.split()[-1]) * 1024
 
 
 def check(program, case, readout, seconds, repeats, folder):
@@ -123,63 +129,44 @@ def choose(program, case, seconds, repeats, folder):
     return {"shots": shots, "ratio": statistics.median(ratios), "ratios": ratios, "taken": taken}
 
 
-def main_auto(program, cases, options):
-    """Prints what `auto` costs over the better read-out."""
-    bad = 0
-    print(f"{'circuit':<16}{'delta':>6}{'shots':>9}{'auto/best':>10}   seconds, last repeat")
-    with tempfile.TemporaryDirectory() as folder:
-        for case in cases:
-            found = choose(program, case, options.seconds, options.repeats, folder)
-            off = found["ratio"] > AUTO_LIMIT
-            bad += off
-            seconds = ", ".join(f"{name} {value:.2f}" for name, value in found["taken"].items())
-            print(f"{pathlib.Path(case[0]).stem:<16}{case[2]:>6}{found['shots']:>9}"
-                  f"{found['ratio']:>10.2f}   {seconds}{'  OFF' if off else ''}", flush=True)
-    print(f"{bad} choices cost more than {AUTO_LIMIT} times the better read-out")
-    sys.exit(1 if bad else 0)
+def off_by(ratio):
+    """By how much of itself a ratio misses 1."""
+    return abs(ratio - 1)
 
 
-def main():
-    parser = argparse.ArgumentParser(description=__doc__)
-    parser.add_argument("--program", required=True)
-    parser.add_argument("--seconds", type=float, default=4.0, help="time of one run")
-    parser.add_argument("--repeats", type=int, default=3)
-    parser.add_argument("--case", action="append", default=[],
-                        help="CIRCUIT.qasm[:READOUT[:DELTA]] besides the demo circuits")
-    parser.add_argument("--auto", action="store_true",
-                        help="check the automatic choice of the read-out instead")
-    parser.add_argument("--only", action="store_true", help="without the demo circuits")
-    options = parser.parse_args()
-    program = str(pathlib.Path(options.program).resolve())
-    cases = [] if options.only else list(CASES)
-    for word in options.case:
-        circuit, readout, delta = (word.split(":") + ["walk", "0.1"][word.count(":"):])[:3]
-        cases.append((circuit, None, float(delta), (readout,)))
-    if options.auto:
-        main_auto(program, cases, options)
-    print(f"{'circuit':<16}{'delta':>6}{'read-out':>9}{'terms':>8}{'shots':>9}{'actual s':>9}"
-          f"{'time':>7}{'MiB':>7}{'memory':>8}{'plan s':>7}   predicted/actual")
-    bad = 0
-    with tempfile.TemporaryDirectory() as folder:
-        for case in cases:
-            for readout in case[3]:
-                try:
-                    found = check(program, case, readout, options.seconds, options.repeats, folder)
-                except RuntimeError as error:
-                    print(f"{case[0]:<16}{case[2]:>6}{readout:>9}  {error}")
-                    continue
-                off = (abs(found["time_ratio"] - 1) > TIME_LIMIT
-                       or abs(found["memory_ratio"] - 1) > MEMORY_LIMIT)
-                bad += off
-                spread = " ".join(f"{ratio:.2f}" for ratio in found["ratios"])
-                print(f"{pathlib.Path(case[0]).stem:<16}{case[2]:>6}{readout:>9}"
-                      f"{found['terms'] or '-':>8}{found['shots']:>9}{found['seconds']:>9.2f}"
-                      f"{found['time_ratio']:>7.2f}{found['memory'] / 2**20:>7.0f}"
-                      f"{found['memory_ratio']:>8.2f}{found['planning']:>7.1f}   {spread}"
-                      f"{'  OFF' if off else ''}", flush=True)
-    print(f"{bad} off by more than {TIME_LIMIT:.0%} in time or {MEMORY_LIMIT:.0%} in memory")
-    sys.exit(1 if bad else 0)
+def measure(bench):
+    """Predicted over actual time and memory of every case."""
+    for case in CASES:
+        for readout in case[3]:
+            what = f"{case[0]}, {readout}, delta = {case[2]}: predicted / actual"
+            try:
+                found = check(bench.program, case, readout, bench.seconds, 1, bench.folder)
+            except (RuntimeError, subprocess.SubprocessError) as error:
+                yield figures.refused(PART, what, error, "to run")
+                continue
+            time_ratio, memory_ratio = found["time_ratio"], found["memory_ratio"]
+            yield figures.Figure(
+                PART, f"{what} time", f"{time_ratio:.2f} ({found['seconds']:.2f} s, "
+                f"planned in {found['planning']:.1f} s)", f"1 +- {TIME_LIMIT}",
+                off_by(time_ratio) <= TIME_LIMIT, {"ratio": time_ratio})
+            yield figures.Figure(
+                PART, f"{what} memory", f"{memory_ratio:.2f} ({found['memory'] / 2**20:.0f} MiB)",
+                f"1 +- {MEMORY_LIMIT}", off_by(memory_ratio) <= MEMORY_LIMIT,
+                {"ratio": memory_ratio})
 
 
-if __name__ == "__main__":
-    main()
+def automatic(bench):
+    """What the automatic choice costs over the better read-out."""
+    seen = set()
+    for case in CASES:
+        if case[:3] in seen:
+            continue
+        seen.add(case[:3])
+        what = f"{case[0]}, delta = {case[2]}: auto / better of dense and walk"
+        try:
+            found = choose(bench.program, case, bench.seconds, 1, bench.folder)
+        except (RuntimeError, subprocess.SubprocessError) as error:
+            yield figures.refused("auto", what, error, "to run")
+            continue
+        taken = ", ".join(f"{name} {value:.2f} s" for name, value in found["taken"].items())
+        yield figures.at_most("auto", what, found["ratio"], AUTO_LIMIT, note=f" ({taken})")
