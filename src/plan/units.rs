@@ -13,7 +13,7 @@ pub fn parse_duration(text: &str) -> Result<f64, String> {
         ("h", 3600.0),
         ("d", 86_400.0),
     ];
-    let expected = "expected a duration with its unit (ms, s, min, h or d), for example 90s, \
+    let expected = "expected a duration above 0 with its unit (ms, s, min, h or d), for example 90s, \
                     10min or 2h";
     quantity(text, &units).ok_or_else(|| expected.to_owned())
 }
